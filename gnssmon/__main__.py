@@ -1,0 +1,5 @@
+"""python -m gnssmon"""
+
+from gnssmon.cli import main
+
+main()
