@@ -4,6 +4,9 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from typing import Literal
+
+Severity = Literal["info", "warning", "serious"]
 
 DEFAULT_CONFIDENCE = 0.95
 

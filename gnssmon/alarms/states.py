@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Literal
 
-from gnssmon.diagnosis.finding import Severity
+from gnssmon.quantities import Severity
 
 Phase = Literal["quiet", "pending", "raised", "clearing"]
 

@@ -3,9 +3,8 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from typing import Literal
 
-Severity = Literal["info", "warning", "serious"]
+from gnssmon.quantities import Severity
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
