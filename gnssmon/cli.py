@@ -1,0 +1,80 @@
+"""The program: its verbs, and the only place that turns errors into words on stderr and an exit code."""
+
+from __future__ import annotations
+
+import importlib
+import sys
+
+import click
+
+from gnssmon import __version__
+from gnssmon.errors import GnssmonError
+from gnssmon.printable import printable
+
+ACCEPTED, REJECTED, WRONG_USAGE, UNDECIDED, SOURCE_FAILED, INTERRUPTED = 0, 1, 2, 3, 4, 130
+"""Exit codes of the contract."""
+
+VERBS = {
+    "demo": "the dashboard on a built-in simulated site",
+    "watch": "live dashboard of one or more receivers",
+    "replay": "the dashboard over a recorded log, with time control",
+    "check": "headless acceptance run: criteria, verdict, report, exit code",
+    "compare": "before against after: two logs or two JSON results",
+    "record": "headless recording of the received bytes",
+    "ports": "serial ports, what speaks on them, at which rate",
+    "simulate": "a synthetic receiver with known truth",
+    "export": "per-epoch or per-signal tables: CSV, Parquet, GeoJSON",
+    "quantities": "every quantity: unit, meaning, source",
+    "criteria": "print a preset of acceptance criteria as TOML, to copy and edit",
+}
+"""One file in ``gnssmon/commands`` a verb, which holds ``command``; loaded only when it is called."""
+
+
+class Verbs(click.Group):
+    """Loads a verb's module when it is asked for: ``check`` must not wait for the dashboard's imports."""
+
+    def list_commands(self, ctx: click.Context) -> list[str]:
+        return list(VERBS)
+
+    def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:
+        if cmd_name not in VERBS:
+            return None
+        module = importlib.import_module(f"gnssmon.commands.{cmd_name}")
+        command: click.Command = module.command
+        return command
+
+    def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
+        with formatter.section("Commands"):
+            formatter.write_dl(list(VERBS.items()))
+
+
+@click.command(cls=Verbs, context_settings={"help_option_names": ["-h", "--help"]})
+@click.version_option(__version__, prog_name="gnssmon")
+def program() -> None:
+    """Tell from a receiver's NMEA 0183 stream whether a GNSS antenna is well installed, and keep the evidence.
+
+    Not a navigation or safety-of-life device.
+
+    Example: gnssmon check replay_logs/open_roof.nmea.gz
+    """
+
+
+def main(arguments: list[str] | None = None) -> None:
+    """Run the program and leave with the contract's exit code."""
+    try:
+        code = program.main(args=arguments, prog_name="gnssmon", standalone_mode=False)
+    except click.exceptions.Abort:
+        code = INTERRUPTED
+    except KeyboardInterrupt:
+        code = INTERRUPTED
+    except click.ClickException as error:
+        error.show()
+        code = WRONG_USAGE
+    except GnssmonError as error:
+        click.echo(f"gnssmon: {printable(str(error))}", err=True)
+        code = error.exit_code
+    except BrokenPipeError:
+        # The reader of our standard output went away (``| head``): nobody is left to tell.
+        sys.stderr.close()
+        code = SOURCE_FAILED
+    sys.exit(code if isinstance(code, int) else ACCEPTED)
