@@ -1,0 +1,228 @@
+"""Quantities epoch by epoch, and their value over a short window that slides: what alarms listen to.
+
+Strategy. The tiles of the subjects answer for whole minutes; an alarm asks for the last ten seconds, every second.
+So each quantity that an alarm may name says here what one epoch contributes: a numerator and a denominator whose sums
+give the window's value (``RATIO``), or a value whose largest, smallest or median counts. ``Sliding`` keeps the
+contributions of the longest window in memory and answers for any number of instants at once. The order of epochs is
+all that matters: the same epochs give the same answers however they were cut into batches.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from enum import Enum
+
+import numpy as np
+import numpy.typing as npt
+
+from gnssmon.constellations import identity
+from gnssmon.epochs.batch import EpochBatch
+from gnssmon.statistics.subject import Site
+
+Floats = npt.NDArray[np.float64]
+Ints = npt.NDArray[np.int64]
+
+
+class Combine(Enum):
+    """How epochs become a window's value."""
+
+    RATIO = "sum of numerators / sum of denominators"
+    LARGEST = "largest"
+    SMALLEST = "smallest"
+    MEDIAN = "median"
+
+
+@dataclass(frozen=True, slots=True)
+class Instant:
+    """What one epoch contributes to a quantity."""
+
+    combine: Combine
+    contribution: Callable[[EpochBatch, Site], tuple[Floats, Floats]]
+    """Numerator and denominator, shape (n,) each. A denominator of 0 says that the epoch has nothing to say."""
+
+
+def _value(
+    column: Callable[[EpochBatch], npt.NDArray[np.generic]],
+) -> Callable[[EpochBatch, Site], tuple[Floats, Floats]]:
+    def contribution(batch: EpochBatch, site: Site) -> tuple[Floats, Floats]:
+        values = column(batch).astype(np.float64)
+        known = np.isfinite(values) & batch.counted
+        return np.where(known, values, 0.0), known.astype(np.float64)
+
+    return contribution
+
+
+def _share(*qualities: int) -> Instant:
+    return Instant(Combine.RATIO, _value(lambda batch: np.isin(batch.quality, qualities)))
+
+
+def _used(batch: EpochBatch) -> Floats:
+    return np.where((batch.quality > 0) & (batch.satellites_used >= 0), batch.satellites_used.astype(float), np.nan)
+
+
+def _levels(batch: EpochBatch, label: str | None = None) -> tuple[Floats, Floats]:
+    rows = batch.signals
+    heard = np.isfinite(rows.cn0_dbhz)
+    if label is not None:
+        heard &= identity.signal_labels(rows.satellite, rows.signal) == label
+    epoch = rows.epoch[heard]
+    return (
+        np.bincount(epoch, weights=rows.cn0_dbhz[heard], minlength=len(batch)),
+        np.bincount(epoch, minlength=len(batch)).astype(np.float64),
+    )
+
+
+def _strongest4(batch: EpochBatch, site: Site) -> tuple[Floats, Floats]:
+    """Mean of the four strongest satellites (each by its best signal) of every epoch that lists four or more."""
+    rows = batch.signals
+    heard = np.isfinite(rows.cn0_dbhz)
+    order = np.lexsort((-rows.cn0_dbhz[heard], rows.satellite[heard], rows.epoch[heard]))
+    epoch, satellite, cn0_dbhz = (column[heard][order] for column in (rows.epoch, rows.satellite, rows.cn0_dbhz))
+    best = np.ones(len(epoch), dtype=bool)
+    best[1:] = (epoch[1:] != epoch[:-1]) | (satellite[1:] != satellite[:-1])
+    epoch, cn0_dbhz = epoch[best], cn0_dbhz[best].astype(np.float64)
+    order = np.lexsort((-cn0_dbhz, epoch))
+    epoch, cn0_dbhz = epoch[order], cn0_dbhz[order]
+    first = np.searchsorted(epoch, np.arange(len(batch)))
+    rank = np.arange(len(epoch)) - first[epoch]
+    top = rank < 4
+    count = np.bincount(epoch[top], minlength=len(batch))
+    mean = np.bincount(epoch[top], weights=cn0_dbhz[top], minlength=len(batch)) / 4.0
+    enough = count == 4
+    return np.where(enough, mean, 0.0), enough.astype(np.float64)
+
+
+def _in_view(batch: EpochBatch, site: Site) -> tuple[Floats, Floats]:
+    rows = batch.signals
+    pairs = np.unique(rows.epoch.astype(np.int64) << 32 | rows.satellite)
+    count = np.bincount(pairs >> 32, minlength=len(batch)).astype(np.float64)
+    return count, (count > 0).astype(np.float64)
+
+
+def _epochs(batch: EpochBatch, site: Site) -> tuple[Floats, Floats]:
+    return batch.counted.astype(np.float64), np.ones(len(batch))
+
+
+def _load(batch: EpochBatch, site: Site) -> tuple[Floats, Floats]:
+    return batch.size.astype(np.float64), np.ones(len(batch))
+
+
+PER_WINDOW = ("stream.completeness", "stream.link_load")
+"""Sums that are held against the window's length, not against a denominator."""
+
+INSTANTS: dict[str, Instant] = {
+    "stream.completeness": Instant(Combine.RATIO, _epochs),
+    "stream.link_load": Instant(Combine.RATIO, _load),
+    "fix.share_none": _share(0),
+    "fix.share_autonomous": _share(1),
+    "fix.share_differential": _share(2),
+    "fix.share_rtk_float": _share(5),
+    "fix.share_rtk_fixed": _share(4),
+    "fix.share_estimated": _share(6),
+    "satellites.used_mean": Instant(Combine.RATIO, _value(_used)),
+    "satellites.used_min": Instant(Combine.SMALLEST, _value(_used)),
+    "satellites.in_view_mean": Instant(Combine.RATIO, _in_view),
+    "cn0.mean_dbhz": Instant(Combine.RATIO, lambda batch, site: _levels(batch)),
+    "cn0.strongest4_mean_dbhz": Instant(Combine.RATIO, _strongest4),
+    "dop.pdop_median": Instant(Combine.MEDIAN, _value(lambda batch: batch.pdop)),
+    "dop.pdop_max": Instant(Combine.LARGEST, _value(lambda batch: batch.pdop)),
+    "dop.hdop_median": Instant(Combine.MEDIAN, _value(lambda batch: batch.hdop)),
+    "corrections.age_median_s": Instant(Combine.MEDIAN, _value(lambda batch: batch.correction_age_s)),
+    "corrections.age_max_s": Instant(Combine.LARGEST, _value(lambda batch: batch.correction_age_s)),
+}
+"""Every quantity that an alarm may watch; beside these, each member of ``cn0.mean_dbhz.*``."""
+
+LEVEL_FAMILY = "cn0.mean_dbhz."
+
+
+def find(name: str) -> Instant | None:
+    """The contribution behind a quantity's name; None: an alarm cannot watch it."""
+    if name in INSTANTS:
+        return INSTANTS[name]
+    if name.startswith(LEVEL_FAMILY):
+        label = name.removeprefix(LEVEL_FAMILY)
+        return Instant(Combine.RATIO, lambda batch, site: _levels(batch, label))
+    return None
+
+
+SHORTEST_STEP_MS = 10
+"""Steps below this are repeats or a clock being set, not a rate: 50 Hz is the fastest stream."""
+
+
+class Sliding:
+    """One quantity over a window of ``window_s`` seconds, at any instant of the time axis.
+
+    Holds the contributions of the last window only.
+    """
+
+    def __init__(self, name: str, window_s: float, site: Site) -> None:
+        instant = find(name)
+        if instant is None:
+            raise KeyError(name)
+        self._name, self._instant, self._site = name, instant, site
+        self._window_ms = round(window_s * 1000)
+        self._axis_ms = np.empty(0, dtype=np.int64)
+        self._top = np.empty(0)
+        self._bottom = np.empty(0)
+        self._step_ms = np.empty(0)
+        self._shortest_ms = np.inf
+
+    def update(self, batch: EpochBatch) -> None:
+        """Take in closed epochs."""
+        if not len(batch):
+            return
+        top, bottom = self._instant.contribution(batch, self._site)
+        previous = self._axis_ms[-1:] if len(self._axis_ms) else batch.axis_ms[:1]
+        steps = np.diff(batch.axis_ms, prepend=previous).astype(np.float64)
+        steps[steps < SHORTEST_STEP_MS] = np.inf
+        shortest = np.minimum.accumulate(np.minimum(steps, self._shortest_ms))
+        self._shortest_ms = float(shortest[-1])
+        self._axis_ms = np.concatenate([self._axis_ms, batch.axis_ms])
+        self._top = np.concatenate([self._top, top])
+        self._bottom = np.concatenate([self._bottom, bottom])
+        self._step_ms = np.concatenate([self._step_ms, shortest])
+
+    def at(self, instants_ms: Ints) -> Floats:
+        """The quantity over (t - window, t] for each t, shape as given, rising; NaN where nothing is known.
+
+        Epochs older than the last answer's window are forgotten.
+        """
+        # A time axis that stepped back is not sorted: the latest stretch counts.
+        axis_ms = np.maximum.accumulate(self._axis_ms)
+        low = np.searchsorted(axis_ms, instants_ms - self._window_ms, side="right")
+        high = np.searchsorted(axis_ms, instants_ms, side="right")
+        # Rounded, because the sums begin where the last window began: their last bits must not tell how a stream was cut.
+        values = np.round(self._combined(low, high), 9)
+        if len(instants_ms) and low[-1] > 0:
+            keep = slice(int(min(low[-1], len(axis_ms) - 1)), None)
+            self._axis_ms, self._top = self._axis_ms[keep].copy(), self._top[keep].copy()
+            self._bottom, self._step_ms = self._bottom[keep].copy(), self._step_ms[keep].copy()
+        return values
+
+    def _combined(self, low: npt.NDArray[np.intp], high: npt.NDArray[np.intp]) -> Floats:
+        if self._instant.combine is Combine.RATIO:
+            top = np.concatenate([[0.0], np.cumsum(self._top)])
+            bottom = np.concatenate([[0.0], np.cumsum(self._bottom)])
+            total, weight = top[high] - top[low], bottom[high] - bottom[low]
+            if self._name in PER_WINDOW:
+                return self._against_window(total, high)
+            return np.divide(total, weight, out=np.full(len(low), np.nan), where=weight > 0)
+        function = {Combine.LARGEST: np.max, Combine.SMALLEST: np.min, Combine.MEDIAN: np.median}[self._instant.combine]
+        values = np.full(len(low), np.nan)
+        for i, (first, last) in enumerate(zip(low, high, strict=True)):
+            known = self._top[first:last][self._bottom[first:last] > 0]
+            if len(known):
+                values[i] = function(known)
+        return values
+
+    def _against_window(self, total: Floats, high: npt.NDArray[np.intp]) -> Floats:
+        window_s = self._window_ms / 1000.0
+        if self._name == "stream.link_load":
+            return total * 10.0 / (window_s * self._site.baud) if self._site.baud else np.full(len(total), np.nan)
+        if not len(self._step_ms):
+            return np.full(len(total), np.nan)
+        step_ms = self._step_ms[np.maximum(high - 1, 0)]
+        with np.errstate(invalid="ignore"):
+            due = np.where(np.isfinite(step_ms), np.maximum(np.floor(self._window_ms / step_ms), 1.0), np.nan)
+        return np.minimum(total / due, 1.0)
