@@ -1,0 +1,100 @@
+"""Sources: open what the user named.
+
+The list of kinds is ``SCHEMES``; each opener imports what it needs when it is called, so that reading a log never
+loads pyserial.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from pathlib import Path
+
+from gnssmon.clocks import Clock
+from gnssmon.errors import SourceError
+from gnssmon.sources.address import Address, parse_address
+from gnssmon.sources.source import Source
+
+
+@dataclass(frozen=True, slots=True)
+class Scheme:
+    """One kind of source."""
+
+    key: str
+    """As in ``Address.scheme``."""
+    example: str
+    meaning: str
+    """One line of help."""
+    open: Callable[[Address, Clock], Source]
+    """Raises SourceError."""
+    may_return: bool = False
+    """Lost, it may come back: worth trying again."""
+
+
+def _serial(address: Address, clock: Clock) -> Source:
+    from gnssmon.sources.finding import DEFAULT_BAUD
+    from gnssmon.sources.serial_port import SerialPort
+
+    return SerialPort(address.text, clock, port=address.target, baud=address.baud or DEFAULT_BAUD)
+
+
+def _url(address: Address, clock: Clock) -> Source:
+    from gnssmon.sources.finding import DEFAULT_BAUD
+    from gnssmon.sources.serial_port import SerialPort
+
+    return SerialPort(address.text, clock, port=address.target, baud=address.baud or DEFAULT_BAUD)
+
+
+def _tcp(address: Address, clock: Clock) -> Source:
+    from gnssmon.sources.network import TcpStream
+
+    return TcpStream(address, clock)
+
+
+def _udp(address: Address, clock: Clock) -> Source:
+    from gnssmon.sources.network import UdpDatagrams
+
+    return UdpDatagrams(address, clock)
+
+
+def _log(address: Address, clock: Clock) -> Source:
+    from gnssmon.sources.log_file import LogFile
+
+    return LogFile(Path(address.target), label=address.text)
+
+
+def _pipe(address: Address, clock: Clock) -> Source:
+    from gnssmon.sources.standard_input import named_pipe
+
+    return named_pipe(address.target, clock)
+
+
+def _stdin(address: Address, clock: Clock) -> Source:
+    from gnssmon.sources.standard_input import standard_input
+
+    return standard_input(clock)
+
+
+SCHEMES: tuple[Scheme, ...] = (
+    Scheme("serial", "/dev/ttyUSB0@9600", "a serial port; without @BAUD the rate is found", _serial, may_return=True),
+    Scheme("url", "rfc2217://server:4000", "any URL that pyserial opens", _url, may_return=True),
+    Scheme("tcp", "tcp://192.168.1.20:10110", "a TCP server", _tcp, may_return=True),
+    Scheme("udp", "udp://:10110", "datagrams to a port of this computer; a multicast group is joined", _udp),
+    Scheme("log", "site.nmea.gz", "a log file, plain, .gz, .bz2, .xz (.zst from Python 3.14 on)", _log),
+    Scheme("pipe", "/tmp/nmea", "a named pipe", _pipe),
+    Scheme("stdin", "-", "standard input", _stdin),
+)
+
+
+def scheme_of(address: Address) -> Scheme:
+    """The row of ``SCHEMES`` for this address."""
+    for scheme in SCHEMES:
+        if scheme.key == address.scheme:
+            return scheme
+    raise SourceError(f"'{address.text}' cannot be read: a source of the kind '{address.scheme}' is not known")
+
+
+def open_source(text: str, *, clock: Clock) -> Source:
+    """Open what ``text`` names (see ``SCHEMES``). Raises SourceError: what, why, what to try, in one line."""
+    address = parse_address(text)
+    return scheme_of(address).open(address, clock)
