@@ -26,16 +26,13 @@ GOAL_PEAK_MB = 400.0
 def make_log(path: Path, hours: float) -> float:
     """Write the log; returns the seconds it took."""
     began = time.perf_counter()
-    subprocess.run(
-        [sys.executable, "-m", "gnssmon", "simulate", "open_roof", "--to", str(path), "--duration", f"{hours:g}h"]
-        + ["--seed", "1", "--pace", "max"],
-        check=True,
-    )
+    what = ["simulate", "open_roof", "--to", str(path), "--duration", f"{hours:g}h", "--seed", "1", "--pace", "max"]
+    subprocess.run([sys.executable, "-m", "gnssmon", *what], check=True)
     return time.perf_counter() - began
 
 
 def check(path: Path, jobs: int | None) -> tuple[float, float, float, dict[str, object]]:
-    """Wall seconds, CPU seconds, peak MB and the JSON result of ``gnssmon check`` on the log, as a user would run it."""
+    """Wall seconds, CPU seconds, peak MB and the JSON result of ``gnssmon check``, run as a user would."""
     command = [sys.executable, "-m", "gnssmon", "check", str(path), "--json", "-"]
     if jobs is not None:
         command += ["--jobs", str(jobs)]
