@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
+from typing import TypeVar
 
 import numpy as np
 import numpy.typing as npt
@@ -88,6 +89,12 @@ class EpochBatch:
     def __len__(self) -> int:
         return len(self.axis_ms)
 
+    def part(self, start: int, stop: int) -> EpochBatch:
+        """Return the epochs from row ``start`` up to, without, ``stop``, with their satellites; nothing is copied
+        but the satellites' epoch numbers."""
+        values = {f.name: getattr(self, f.name)[start:stop] for f in fields(self) if f.name not in ("signals", "used")}
+        return EpochBatch(**values, signals=_part(self.signals, start, stop), used=_part(self.used, start, stop))
+
     @property
     def minute(self) -> Ints:
         """Key of the tile that each epoch belongs to: ``axis_ms // 60 000``."""
@@ -102,6 +109,16 @@ class EpochBatch:
     def fixed_position(self) -> npt.NDArray[np.bool_]:
         """Counted epochs with a position and a quality above 0."""
         return self.counted & (self.quality > 0) & np.isfinite(self.latitude_deg) & np.isfinite(self.longitude_deg)
+
+
+_Rows = TypeVar("_Rows", SignalRows, UsedRows)
+
+
+def _part(rows: _Rows, start: int, stop: int) -> _Rows:
+    chosen = slice(*np.searchsorted(rows.epoch, (start, stop)))
+    values = {f.name: getattr(rows, f.name)[chosen] for f in fields(rows)}
+    values["epoch"] = values["epoch"] - np.int32(start)
+    return type(rows)(**values)
 
 
 KINDS = ("GGA", "GNS", "RMC", "GLL", "GSA", "GSV", "GST", "VTG", "ZDA", "GBS", "GRS", "HDT", "THS", "DTM", "TXT")
