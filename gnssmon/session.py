@@ -7,8 +7,8 @@ The reader does nothing but read: neither a slow disk nor a slow screen can hold
 watchers before it is with the monitor: bytes are on disk before anyone interprets them.
 
 Of a log, each line holds a few blocks and then makes the reader wait. Of a live source, a line never makes the
-reader wait before ``LIVE_BYTES`` are waiting, because what is not read is lost in the kernel; bytes that pile up
-behind a slow reader are joined to fewer, larger chunks.
+reader wait before ``LIVE_BYTES`` are waiting, because what is not read is lost in the kernel; what piles up is joined
+to fewer, larger chunks, which still know when each part came.
 """
 
 from __future__ import annotations
@@ -21,10 +21,11 @@ from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import Literal, Protocol
 
-from gnssmon.chunks import Chunk
+from gnssmon.chunks import Chunk, joined
 from gnssmon.clocks import Clock
-from gnssmon.errors import GnssmonError
-from gnssmon.sources.source import Source
+from gnssmon.errors import GnssmonError, SourceError
+from gnssmon.replay.between import Between
+from gnssmon.sources.source import SILENCE_S, Source
 
 LOG_CHUNKS = 2
 """Blocks of a log read ahead: one to be ready, one being made. More only costs memory."""
@@ -37,6 +38,14 @@ LIVE_CHUNKS = 1000
 
 JOINED_BYTES = 65536
 """A joined chunk is not made larger than this."""
+
+FEED_S = 0.05
+"""A live monitor is fed at most this often, with all that came meanwhile: a line at 115 200 baud brings a hundred
+chunks a second, and the work per feed is a millisecond whatever it brings."""
+
+DEAF_S = 2.5
+"""A live reader that has given nothing for so long, not even silence, hangs in the operating system (a name being
+looked up, a driver): the session tells the monitor of the silence in its place."""
 
 PATIENCE_S = 0.25
 """How often a waiting thread looks whether it should stop."""
@@ -53,7 +62,8 @@ Watcher = Callable[[Chunk], None]
 """Takes each chunk before the monitor does, in the keeper thread: a recorder."""
 
 Look = Callable[[], None]
-"""Called in the monitor's own thread after each feed; takes a snapshot when it is time for one."""
+"""Called in the monitor's own thread after each feed and some four times a second when there is nothing to feed;
+takes a snapshot when it is time for one."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -87,7 +97,7 @@ class Line:
                 return False
             last = self._waiting[-1] if self._waiting else None
             if last and len(self._waiting) >= LIVE_CHUNKS and len(last.data) + len(chunk.data) <= JOINED_BYTES:
-                self._waiting[-1] = Chunk(last.data + chunk.data, chunk.received_s)
+                self._waiting[-1] = joined((last, chunk))
             else:
                 self._waiting.append(chunk)
             self._bytes += len(chunk.data)
@@ -95,16 +105,23 @@ class Line:
             return True
 
     def take(self, wait_s: float = PATIENCE_S) -> Chunk | None:
-        """The next chunk; None when none came within ``wait_s`` or none will come."""
+        """What waits: of a log the next block, of a live source all that came meanwhile, joined.
+
+        None when nothing came within ``wait_s`` or nothing more will come.
+        """
         with self._changed:
             if not self._waiting and not self._ended:
                 self._changed.wait(wait_s)
             if not self._waiting:
                 return None
-            chunk = self._waiting.popleft()
-            self._bytes -= len(chunk.data)
+            chunks = [self._waiting.popleft()]
+            size = len(chunks[0].data)
+            while self._live and self._waiting and size + len(self._waiting[0].data) <= JOINED_BYTES:
+                chunks.append(self._waiting.popleft())
+                size += len(chunks[-1].data)
+            self._bytes -= size
             self._changed.notify_all()
-            return chunk
+        return joined(chunks)
 
     def end(self) -> None:
         """No further chunk will be put."""
@@ -142,30 +159,30 @@ def run(
 ) -> Outcome:
     """Feed the source's bytes to the watchers and the monitor until it ends, ``stop`` is set, or ``for_s`` is over.
 
-    ``for_s`` is time of the stream: the host's for a live source, the arrival times for a simulated one. A log's
-    span is cut beforehand (``replay.index.Between``), exactly to the epoch. Closes the source, and finishes the
-    monitor, in every case. Whatever a watcher or the monitor raises is raised here; what the source raises
-    (SourceError) is told in the outcome, behind everything that it gave before.
+    ``for_s`` is the host's time for a live source, and the stream's own (exact to the epoch) for any other. Closes
+    the source, and finishes the monitor, in every case. What a watcher or the monitor raises is raised here; what
+    the source raises (SourceError) is told in the outcome, behind everything that it gave before.
     """
+    if for_s is not None:
+        source = Between(source, for_s=for_s)
     threads = _Threads(source, watchers)
-    started_s = clock.steady()
-    first_s: float | None = None
+    started_s = heard_s = clock.steady()
     ended: Literal["end", "stopped", "elapsed"] = "end"
     try:
         while True:
             chunk = threads.last.take()
-            if chunk is not None:
-                if source.kind == "simulated" and for_s is not None:
-                    first_s = chunk.received_s if first_s is None else first_s
-                    if chunk.received_s - first_s >= for_s:
-                        ended = "elapsed"
-                        break
-                monitor.feed(chunk)
-                if look is not None:
-                    look()
-            elif threads.last.drained:
+            if chunk is None and threads.last.drained:
                 break
-            if stop.is_set():
+            if chunk is not None:
+                heard_s = clock.steady()
+            elif source.kind == "live" and clock.steady() - heard_s >= DEAF_S:
+                heard_s += SILENCE_S
+                chunk = Chunk(b"", clock.now())
+            if chunk is not None:
+                monitor.feed(chunk)
+            if look is not None:
+                look()
+            if stop.is_set() or (source.kind == "live" and stop.wait(FEED_S)):
                 ended = "stopped"
                 break
             if source.kind == "live" and for_s is not None and clock.steady() - started_s >= for_s:
@@ -178,6 +195,8 @@ def run(
     if ended != "end":
         return Outcome(ended)
     if threads.lost is not None:
+        if not isinstance(threads.lost, SourceError):
+            raise threads.lost
         return Outcome("early", str(threads.lost))
     if for_s is not None and source.kind == "live":
         over_s = clock.steady() - started_s
