@@ -58,9 +58,19 @@ def _udp(address: Address, clock: Clock) -> Source:
 
 
 def _log(address: Address, clock: Clock) -> Source:
+    from gnssmon.recording.folder import has_arrivals
     from gnssmon.sources.log_file import LogFile
 
-    return LogFile(Path(address.target), label=address.text)
+    path = Path(address.target)
+    if has_arrivals(path):
+        return _recording(address, clock)
+    return LogFile(path, label=address.text)
+
+
+def _recording(address: Address, clock: Clock) -> Source:
+    from gnssmon.sources.recorded import Recording
+
+    return Recording(Path(address.target), label=address.text)
 
 
 def _pipe(address: Address, clock: Clock) -> Source:
@@ -81,7 +91,8 @@ SCHEMES: tuple[Scheme, ...] = (
     Scheme("tcp", "tcp://192.168.1.20:10110", "a TCP server", _tcp, may_return=True),
     Scheme("udp", "udp://:10110", "datagrams to a port of this computer; a multicast group is joined", _udp),
     Scheme("log", "site.nmea.gz", "a log file, plain, .gz, .bz2, .xz (.zst from Python 3.14 on)", _log),
-    Scheme("pipe", "/tmp/nmea", "a named pipe", _pipe),
+    Scheme("recording", "2025-05-20_roof/", "a folder that 'gnssmon record' has written", _recording),
+    Scheme("pipe", "receiver.fifo", "a named pipe", _pipe),
     Scheme("stdin", "-", "standard input", _stdin),
 )
 

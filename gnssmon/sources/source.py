@@ -50,6 +50,8 @@ class Source(ABC):
         """Bytes taken so far, as stored: with ``size`` the share that was read."""
         self.state = "reading"
         """For people: ``reading``, ``ended``, ``lost 3 s ago: unplugged, trying again``."""
+        self.doubts: tuple[str, ...] = ()
+        """What is wrong with the evidence though it could be read: one line each, untrusted."""
         self._closing = False
 
     @abstractmethod
