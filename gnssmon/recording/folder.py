@@ -78,7 +78,7 @@ def stored(path: Path) -> Path | None:
 
 
 def read_folder(folder: Path) -> tuple[RecordedFile, ...]:
-    """The files of a recording in order; none where ``folder`` holds none. Raises RecordingError when it is unreadable."""
+    """The files of a recording in order, perhaps none. Raises RecordingError when the folder is unreadable."""
     try:
         there = {p.name.removesuffix(PACKED) for p in folder.iterdir()}
     except OSError as error:
