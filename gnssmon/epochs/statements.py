@@ -50,14 +50,15 @@ _QUALITY_OF_PREFERENCE = np.array([-1, *(QUALITY_OF_LETTER[letter] for letter in
 def stated_times(columns: Columns, first: int, count: int) -> tuple[Ints, npt.NDArray[np.int8]]:
     """Return each sentence's time of day (ms, -1 none) and its rank as a giver of time, both of shape (count,).
 
-    ``first`` is the sequence of the block's first sentence.
+    ``first`` is the sequence of the first sentence asked about; earlier ones of the block are passed over.
     """
     time_ms = np.full(count, -1, dtype=np.int64)
     rank = np.zeros(count, dtype=np.int8)
     for place, formatter in enumerate(reversed(TIMED)):
         if table := columns.tables.get(formatter):
-            at = table.sequence - first
-            time_ms[at] = table.fields["utc_ms"]
+            begin = int(np.searchsorted(table.sequence, first))
+            at = table.sequence[begin:] - first
+            time_ms[at] = table.fields["utc_ms"][begin:]
             rank[at] = place
     return time_ms, rank
 
@@ -72,25 +73,26 @@ def statements(columns: Columns, grouped: Grouped, first: int) -> dict[str, Rows
     current = {name: grouped.current[table.sequence - first] for name, table in tables.items()}
     leading = [name for name in LEADING if name in tables]
     found = {
-        "position": [_position(name, tables[name], own[name]) for name in leading],
+        "position": [position_rows(name, tables[name], own[name]) for name in leading],
         "presence": [_each_once(current[name], "kind", LEADING.index(name)) for name in leading],
         "kinds": [_each_once(own[name], "bit", 1 << KINDS.index(name)) for name in tables if name in KINDS],
-        "velocity": [_velocity(name, tables[name], own[name]) for name in ("RMC", "VTG") if name in tables],
-        "heading": [_heading(name, tables[name], own[name]) for name in ("HDT", "THS") if name in tables],
+        "velocity": [velocity_rows(name, tables[name], own[name]) for name in ("RMC", "VTG") if name in tables],
+        "heading": [heading_rows(name, tables[name], own[name]) for name in ("HDT", "THS") if name in tables],
         "date": [_date(name, tables[name], own[name]) for name in ("RMC", "ZDA") if name in tables],
     }
     rows = {group: together(*parts) for group, parts in found.items() if parts}
     if "GST" in tables:
         rows["sigma"] = _sigma(tables["GST"], own["GST"])
     if "GSA" in tables:
-        rows["dop"] = _dop(tables["GSA"], own["GSA"])
+        rows["dop"] = dop_rows("GSA", tables["GSA"], own["GSA"])
         rows["used"] = _used(tables["GSA"], own["GSA"], columns.used)
     if "GSV" in tables:
         rows["signals"] = _signals(tables["GSV"], own["GSV"], columns.satellites)
     return rows
 
 
-def _position(formatter: str, table: Table, epoch: Ints) -> Rows:
+def position_rows(formatter: str, table: Table, epoch: Ints) -> Rows:
+    """Where a sentence of LEADING says the antenna is, and how good that is."""
     fields, count = table.fields, len(table)
     timed = fields["utc_ms"].astype(np.int64) >= 0
     rank = timed * 8 + (len(LEADING) - LEADING.index(formatter)) * 2
@@ -150,7 +152,8 @@ def _each_once(epoch: Ints, name: str, value: int) -> Rows:
     return Rows({"epoch": once, name: np.full(len(once), value, dtype=np.int64)})
 
 
-def _velocity(formatter: str, table: Table, epoch: Ints) -> Rows:
+def velocity_rows(formatter: str, table: Table, epoch: Ints) -> Rows:
+    """Speed and course from RMC or VTG."""
     knots = table.fields["speed_knots"].astype(np.float64)
     rank = np.isfinite(knots) * 2 + (formatter == "RMC")
     course = table.fields["course_deg"]
@@ -159,7 +162,8 @@ def _velocity(formatter: str, table: Table, epoch: Ints) -> Rows:
     )
 
 
-def _heading(formatter: str, table: Table, epoch: Ints) -> Rows:
+def heading_rows(formatter: str, table: Table, epoch: Ints) -> Rows:
+    """Heading from HDT or THS."""
     heading = table.fields["heading_deg"].astype(np.float64)
     if formatter == "THS":
         heading = np.where(table.fields["mode"] == ord("V"), np.nan, heading)
@@ -188,8 +192,8 @@ def _sigma(table: Table, epoch: Ints) -> Rows:
     return Rows({"epoch": epoch, "rank": _stated(values), **values})
 
 
-def _dop(table: Table, epoch: Ints) -> Rows:
-    """Some receivers write 0.0 where they have none; no geometry has it."""
+def dop_rows(formatter: str, table: Table, epoch: Ints) -> Rows:
+    """GSA; some receivers write 0.0 where they have none; no geometry has it."""
     values: dict[str, Column] = {}
     for name in ("pdop", "hdop", "vdop"):
         value = table.fields[name].astype(np.float64)

@@ -28,7 +28,7 @@ def test_untimed_sentences_belong_to_the_open_epoch() -> None:
 
 
 def test_late_sentence_joins_the_epoch_before() -> None:
-    """One that comes after the next epoch has opened still belongs to its own; what is untimed belongs to the open one."""
+    """One that comes after the next epoch has opened belongs to its own; what is untimed belongs to the open one."""
     assert own([0, 1000, 0, UNTIMED, 2000, 1000, 2000]) == [0, 1, 0, 1, 2, 1, 2]
 
 
