@@ -1,43 +1,28 @@
-"""How far a number from correlated samples can be trusted."""
+"""Intervals of shares, quantiles, spreads, counts and lengths, given how much correlated samples are worth.
+
+The error of a mean comes from ``long_run``; everything else is reduced to it. A share is the mean of an indicator; a
+quantile is where a share is reached; a variance is the mean of squares. So each has an effective number of samples of
+its own: slow errors hurt a mean more than a spread, and a spread more than the far end of a quantile.
+"""
 
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
 
+from gnssmon.estimators.long_run import Error
+
 Floats = npt.NDArray[np.float64]
 Interval = tuple[float, float]
 
-TERMS = 8
-"""Cosine terms that measure the slowest movement seen in a record."""
-MOST_BLOCKS = 2048
-"""Records are averaged down to this many blocks first: the slow cosines cannot tell the difference."""
-FEWEST_SAMPLES = 3 * TERMS
-"""Below this many samples nothing is said."""
-FLOOR_FREEDOM = 8.0
-
-
-@dataclass(frozen=True, slots=True)
-class SlowError:
-    """What is known beforehand of errors slower than any record shows: their size and how long they last."""
-
-    sigma: float
-    time_constant_s: float
-
-    def mean_variance(self, duration_s: float) -> float:
-        """Variance of the mean over a record of this length."""
-        u = duration_s / self.time_constant_s
-        return self.sigma**2 * (1.0 if u < 1e-6 else 2.0 / u - 2.0 * (1.0 - math.exp(-u)) / u**2)
-
-
-def student(confidence: float, freedom: float) -> float:
-    """Two-sided factor of Student's t distribution."""
-    from scipy.special import stdtrit
-
-    return float(stdtrit(freedom, 0.5 + confidence / 2.0))
+FEW = 100.0
+"""Below so many effective samples the order statistics near the ends of a sample are too few to stand alone."""
+FEWEST = 2.0
+"""Below so many they say nothing at all."""
+SLOWEST = 0.75
+"""Largest share of a variance that the movement of the mean is believed to have taken away."""
 
 
 def normal(confidence: float) -> float:
@@ -47,64 +32,35 @@ def normal(confidence: float) -> float:
     return float(ndtri(0.5 + confidence / 2.0))
 
 
-def blocks(values: Floats) -> Floats:
-    """Means of at most ``MOST_BLOCKS`` nearly equal stretches; ``values`` has shape (n,) or (n, d)."""
-    if len(values) <= MOST_BLOCKS:
-        return values
-    edge = np.linspace(0, len(values), MOST_BLOCKS + 1).astype(np.intp)
-    size = np.diff(edge).astype(np.float64)
-    sums = np.add.reduceat(values, edge[:-1], axis=0)
-    return np.asarray(sums / (size if values.ndim == 1 else size[:, None]))
-
-
-def cosines(count: int, terms: int) -> Floats:
-    """Type-II cosines over ``count`` samples, shape (terms, count), each of mean square 1."""
-    phase = np.pi * (np.arange(count) + 0.5) / count
-    return np.asarray(math.sqrt(2.0) * np.cos(np.outer(np.arange(1, terms + 1), phase)))
-
-
-def mean_covariance(values: Floats) -> Floats:
-    """Covariance of the mean of correlated samples of shape (n, d)."""
-    coarse = blocks(values)
-    weights = cosines(len(coarse), TERMS) @ (coarse - coarse.mean(axis=0)) / len(coarse)
-    return np.asarray(weights.T @ weights / TERMS)
-
-
-def effective_samples(values: Floats) -> float:
-    """How many independent samples the mean of these, shape (n,), is worth; NaN where too few to say."""
-    if len(values) < FEWEST_SAMPLES:
+def effective_samples(variance: float, error: Error | None, count: int) -> float:
+    """How many independent samples the mean of ``count`` is worth; NaN: too few to say, or no movement at all."""
+    if error is None or not variance > 0.0:
         return math.nan
-    of_mean = float(mean_covariance(values[:, None])[0, 0])
-    variance = float(values.var(ddof=1))
-    if of_mean <= 0.0 or variance <= 0.0:
+    return min(max(variance / error.shown_variance, 1.0), float(count))
+
+
+def effective_trials(share: float, error: Error | None, confidence: float, count: int) -> float:
+    """How many independent trials a share is worth, its uncertainty included, so that binomial intervals with this
+    number hold ``confidence``; NaN: too few to say."""
+    if error is None:
         return math.nan
-    return min(max(variance / of_mean, 1.0), float(len(values)))
+    half = error.half_width(confidence)
+    return min(share * (1.0 - share) * (normal(confidence) / half) ** 2, float(count)) if half > 0.0 else math.nan
 
 
-def mean_error(mean_variance: float, slow_variance: float, confidence: float) -> float:
-    """Half width of the interval of a mean, from the variance that the record shows and the one known beforehand.
+def scale_factors(
+    mean_square: float, error: Error | None, confidence: float, *, effective: float
+) -> tuple[float, float] | None:
+    """Factors on a root mean square for its interval, on a logarithmic scale.
 
-    Degrees of freedom by Welch & Satterthwaite (JCGM 100:2008, G.4.1).
+    ``error``: of the mean of the squares. ``effective``: effective samples of the mean about which the squares were
+    taken; what that mean took away is given back at the upper end, 1/√(1 - 1/effective).
     """
-    total = mean_variance + slow_variance
-    if total <= 0.0:
-        return 0.0
-    freedom = total**2 / (mean_variance**2 / TERMS + slow_variance**2 / FLOOR_FREEDOM)
-    return student(confidence, freedom) * math.sqrt(total)
-
-
-def spread_interval(spread: float, effective: float, confidence: float, *, dimensions: int = 1) -> Interval | None:
-    """Interval of a standard deviation, or of a root of a sum of ``dimensions`` like variances."""
-    from scipy.special import chdtri
-
-    freedom = dimensions * (effective - 1.0)
-    if not freedom > 1.0:
+    if error is None or not mean_square > 0.0 or math.isnan(effective):
         return None
-    tail = (1.0 - confidence) / 2.0
-    return (
-        spread * math.sqrt(freedom / float(chdtri(freedom, tail))),
-        spread * math.sqrt(freedom / float(chdtri(freedom, 1.0 - tail))),
-    )
+    half = 0.5 * error.half_width(confidence) / mean_square
+    back = 1.0 / math.sqrt(1.0 - min(1.0 / effective, SLOWEST))
+    return math.exp(-min(half, 50.0)), math.exp(min(half, 50.0)) * back
 
 
 def ordered_quantile(ordered: Floats, share: float) -> float:
@@ -115,51 +71,45 @@ def ordered_quantile(ordered: Floats, share: float) -> float:
     return float(ordered[low] + (ordered[high] - ordered[low]) * (position - low))
 
 
-def quantile_interval(ordered: Floats, share: float, effective: float, confidence: float) -> Interval | None:
-    """Interval of the quantile at ``share`` from the order statistics ``ordered``; None: too few to have one."""
-    if not effective > 1.0:
-        return None
-    tail = (1.0 - confidence) / 2.0
-    # The largest of too few samples may well lie below the quantile, the smallest above it.
-    if share**effective > tail or (1.0 - share) ** effective > tail:
-        return None
-    half = normal(confidence) * math.sqrt(share * (1.0 - share) / effective)
-    return ordered_quantile(ordered, share - half), ordered_quantile(ordered, share + half)
+def quantile_interval(
+    ordered: Floats, share: float, trials: float, confidence: float, *, factors: tuple[float, float] | None = None
+) -> Interval | None:
+    """Interval of the quantile at ``share`` of rising values from their order statistics.
 
-
-def length_interval(length: float, half_width: float, confidence: float) -> Interval:
-    """Interval of the length of a plane vector whose two components are each known to ``half_width``.
-
-    The measured length follows a Rice distribution; its parameter is bracketed by the tails (non-central chi-square
-    with two degrees of freedom).
+    ``trials``: effective trials of the share below the quantile. ``factors``: of the spread (``scale_factors``); where
+    the order statistics are few the interval takes in the quantile times these, and without them it is None: the
+    largest of too few samples may well lie below the quantile (Hahn & Meeker, Statistical Intervals; 72 independent
+    ones are needed for a two-sided 95 % interval of the 95 % quantile).
     """
-    from scipy.special import chndtr, chndtrinc
-
-    if half_width <= 0.0:
-        return length, length
-    sigma = half_width / normal(confidence)
+    if math.isnan(trials) or not trials > 0.0:
+        return None
     tail = (1.0 - confidence) / 2.0
-    square = (length / sigma) ** 2
-    if square > 1e4:
-        return length - half_width, length + half_width
-    low = math.sqrt(float(chndtrinc(square, 2.0, 1.0 - tail))) if chndtr(square, 2.0, 0.0) > 1.0 - tail else 0.0
-    high = math.sqrt(float(chndtrinc(square, 2.0, tail))) if chndtr(square, 2.0, 0.0) > tail else 0.0
-    return sigma * low, sigma * high
+    half = normal(confidence) * math.sqrt(share * (1.0 - share) / trials)
+    low, high = ordered_quantile(ordered, share - half), ordered_quantile(ordered, share + half)
+    out_of_reach = share**trials > tail or (1.0 - share) ** trials > tail
+    if factors is None:
+        return None if out_of_reach else (low, high)
+    value = ordered_quantile(ordered, share)
+    if trials < FEWEST:
+        return value * factors[0], value * factors[1]
+    if trials < FEW:
+        return min(low, value * factors[0]), max(high, value * factors[1])
+    return low, high
 
 
-def share_interval(successes: float, effective: float, confidence: float) -> Interval:
-    """Interval of a share by Clopper & Pearson with an effective number of trials (which need not be whole)."""
+def share_interval(share: float, trials: float, confidence: float) -> Interval:
+    """Interval of a share by Clopper & Pearson with an effective number of trials, which need not be whole."""
     from scipy.special import betaincinv
 
     tail = (1.0 - confidence) / 2.0
-    k, n = successes, effective
-    low = 0.0 if k <= 0.0 else float(betaincinv(k, n - k + 1.0, tail))
-    high = 1.0 if k >= n else float(betaincinv(k + 1.0, n - k, 1.0 - tail))
+    hits = share * trials
+    low = 0.0 if share <= 0.0 else float(betaincinv(hits, trials - hits + 1.0, tail))
+    high = 1.0 if share >= 1.0 else float(betaincinv(hits + 1.0, trials - hits, 1.0 - tail))
     return low, high
 
 
 def count_interval(count: int, confidence: float) -> Interval:
-    """Interval of the expected number of events when ``count`` were seen (Garwood 1936).
+    """Interval of the expected number of events when ``count`` were seen (F. Garwood, Biometrika 28, 1936).
 
     Nothing seen has no lower limit by that method; Jeffreys' one is used then, so that a rate keeps an upper limit.
     """
@@ -168,3 +118,36 @@ def count_interval(count: int, confidence: float) -> Interval:
     tail = (1.0 - confidence) / 2.0
     low = float(chdtri(2.0 * count if count else 1.0, 1.0 - tail)) / 2.0
     return low, float(chdtri(2.0 * count + 2.0, tail)) / 2.0
+
+
+def length_interval(length: float, half_width: float, confidence: float) -> Interval:
+    """Interval of the length of a plane vector whose two components are each known to ``half_width``.
+
+    The measured length follows a Rice distribution; its parameter is bracketed by the tails (non-central chi-square
+    with two degrees of freedom).
+    """
+    from scipy.special import chdtr, chndtrinc
+
+    if half_width <= 0.0:
+        return length, length
+    sigma = half_width / normal(confidence)
+    tail = (1.0 - confidence) / 2.0
+    square = (length / sigma) ** 2
+    if square > 1e4:
+        return length - half_width, length + half_width
+    below = float(chdtr(2.0, square))  # if the true length were zero
+    low = math.sqrt(float(chndtrinc(square, 2.0, 1.0 - tail))) if below > 1.0 - tail else 0.0
+    high = math.sqrt(float(chndtrinc(square, 2.0, tail))) if below > tail else 0.0
+    return sigma * low, sigma * high
+
+
+def vector_chance(components: tuple[float, ...], half_widths: tuple[float, ...], confidence: float) -> float:
+    """Probability that chance alone gives a vector this far from zero, components independent (chi-square)."""
+    from scipy.special import chdtrc
+
+    factor = normal(confidence)
+    square = sum(
+        (component / half * factor) ** 2 if half > 0.0 else math.inf if component else 0.0
+        for component, half in zip(components, half_widths, strict=True)
+    )
+    return float(chdtrc(float(len(components)), square))

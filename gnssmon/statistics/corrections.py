@@ -7,7 +7,7 @@ from typing import ClassVar, Self
 import numpy as np
 
 from gnssmon.epochs.batch import EpochBatch
-from gnssmon.estimators import uncertainty
+from gnssmon.estimators import long_run, uncertainty
 from gnssmon.estimators.series import Series
 from gnssmon.estimators.spells import Spells
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity, exact
@@ -111,9 +111,10 @@ class Corrections:
         ordered = np.sort(age_s)
         for name, share in (("age_median_s", 0.5), ("age_95_s", 0.95)):
             value = uncertainty.ordered_quantile(ordered, share)
-            effective = uncertainty.effective_samples((age_s > value).astype(np.float64))
-            interval = uncertainty.quantile_interval(ordered, share, effective, confidence)
-            answers[f"corrections.{name}"] = Estimate(value, interval, confidence, len(age_s), effective)
+            (error,) = long_run.mean_errors([age_s > value])
+            trials = uncertainty.effective_trials(share, error, confidence, len(age_s))
+            interval = uncertainty.quantile_interval(ordered, share, trials, confidence)
+            answers[f"corrections.{name}"] = Estimate(value, interval, confidence, len(age_s), trials)
         answers["corrections.age_max_s"] = exact(float(ordered[-1]), len(age_s))
         out = runs.state == OUT
         begin_ms, _, after_ms = runs.spells(out)

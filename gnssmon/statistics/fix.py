@@ -9,7 +9,7 @@ import numpy as np
 import numpy.typing as npt
 
 from gnssmon.epochs.batch import EpochBatch
-from gnssmon.estimators import uncertainty
+from gnssmon.estimators import long_run, uncertainty
 from gnssmon.estimators.spells import Runs, Spells
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity, exact
 from gnssmon.statistics.minutes import Minutes
@@ -171,11 +171,12 @@ def _shares(runs: Runs, confidence: float) -> dict[str, Estimate]:
         held = states == code
         count = int(np.count_nonzero(held))
         share = count / total
-        effective = uncertainty.effective_samples(held.astype(np.float64)) if 0 < count < total else unseen_trials
-        if math.isnan(effective):
-            effective = min(float(total), max(unseen_trials, 1.0))
-        interval = uncertainty.share_interval(share * effective, effective, confidence)
-        answers[f"fix.share_{name}"] = Estimate(share, interval, confidence, total, effective)
+        (error,) = long_run.mean_errors([held]) if 0 < count < total else (None,)
+        trials = uncertainty.effective_trials(share, error, confidence, total)
+        if math.isnan(trials):
+            trials = unseen_trials
+        interval = uncertainty.share_interval(share, trials, confidence)
+        answers[f"fix.share_{name}"] = Estimate(share, interval, confidence, total, trials)
     return answers
 
 

@@ -72,9 +72,8 @@ class Positions:
         """Width of the cells of which one position each is kept; 0: all are kept."""
         return self._series.grid_ms
 
-    def update(self, batch: EpochBatch) -> None:
-        """Take in the positions of closed epochs."""
-        fixed = np.flatnonzero(batch.fixed_position)
+    def update(self, batch: EpochBatch, fixed: npt.NDArray[np.intp]) -> None:
+        """Take in the positions of closed epochs, of the rows ``fixed``."""
         self._series.update(
             batch.axis_ms[fixed],
             latitude_deg=batch.latitude_deg[fixed],
