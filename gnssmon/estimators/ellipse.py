@@ -10,8 +10,7 @@ import numpy.typing as npt
 Floats = npt.NDArray[np.float64]
 
 AZIMUTHS = 256
-"""Azimuths of the sum that stands for an integral: exact to 1e-9 down to an axis ratio of 0.05."""
-FLATTEST = 0.02
+"""Azimuths of the sum that stands for an integral; the integrand is smooth for every axis ratio, zero included."""
 
 
 def ellipse(covariance: Floats) -> tuple[float, float, float]:
@@ -30,17 +29,18 @@ def ellipse(covariance: Floats) -> tuple[float, float, float]:
 def gaussian_radius(share: float, major: float, minor: float) -> float:
     """Radius that holds ``share`` of normal errors with these standard deviations along the axes.
 
-    In polar form P(R < r) = 1 - (1/2π) ∫ (ab/q) exp(-r²q / 2a²b²) dφ with q = a² sin²φ + b² cos²φ; the integral is a
-    sum over even azimuths, inverted by bisection.
+    A normal error is a Rayleigh length along a random azimuth of the unit circle, stretched to the ellipse:
+    P(R > r) = (1/2π) ∫ exp(-r² / 2(a² cos²φ + b² sin²φ)) dφ. The integral is a sum over even azimuths, inverted by
+    bisection.
     """
     if major <= 0.0:
         return 0.0
-    ratio = max(minor / major, FLATTEST)
+    ratio = minor / major
     azimuth = (np.arange(AZIMUTHS) + 0.5) * (2.0 * math.pi / AZIMUTHS)
-    q = np.sin(azimuth) ** 2 + ratio**2 * np.cos(azimuth) ** 2
+    square = np.cos(azimuth) ** 2 + ratio**2 * np.sin(azimuth) ** 2
     low, high = 0.0, 8.0
     for _ in range(50):
         radius = (low + high) / 2.0
-        inside = 1.0 - float(np.mean(ratio / q * np.exp(-(radius**2) * q / (2.0 * ratio**2))))
+        inside = 1.0 - float(np.mean(np.exp(-(radius**2) / (2.0 * square))))
         low, high = (radius, high) if inside < share else (low, radius)
     return major * (low + high) / 2.0

@@ -1,4 +1,7 @@
-"""Sums and peaks by the minute, for pictures over time."""
+"""Sums and peaks by the minute, for pictures over time.
+
+Sums are kept in whole units of ``UNIT``, so that they are exact and do not depend on how a stream was cut.
+"""
 
 from __future__ import annotations
 
@@ -14,6 +17,8 @@ from gnssmon.statistics.subject import Span
 Floats = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.int64]
 
+UNIT = 1e-4
+"""Finer than any decimal that NMEA receivers print for what is summed here."""
 MOST_MINUTES = 70_000
 """Newest minutes kept, seven weeks: a picture shows no more, and counts over longer times are kept elsewhere."""
 
@@ -33,7 +38,8 @@ class Minutes:
             return
         start = np.flatnonzero(np.diff(minute, prepend=minute[0] - 1))
         columns: dict[str, npt.NDArray[np.generic]] = {
-            name: np.add.reduceat(np.asarray(sums[name], dtype=np.float64), start) for name in self._sums
+            name: np.add.reduceat(np.rint(np.asarray(sums[name], dtype=np.float64) / UNIT), start)
+            for name in self._sums
         }
         for name in self._peaks:
             columns[name] = np.fmax.reduceat((peaks or {})[name], start)
@@ -57,7 +63,8 @@ class Minutes:
         columns: dict[str, Floats] = {}
         for name in self._sums:
             values = self._rows[name].view(np.float64)[inside]
-            columns[name] = np.bincount(row, weights=values, minlength=len(keys)).astype(np.float64)
+            # Divided, not multiplied by UNIT: 369 000 units are 36.9 to the last digit.
+            columns[name] = np.bincount(row, weights=values, minlength=len(keys)) / round(1.0 / UNIT)
         for name in self._peaks:
             columns[name] = np.full(len(keys), np.nan)
             np.fmax.at(columns[name], row, self._rows[name].view(np.float64)[inside])
