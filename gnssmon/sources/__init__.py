@@ -15,6 +15,9 @@ from gnssmon.errors import SourceError
 from gnssmon.sources.address import Address, parse_address
 from gnssmon.sources.source import Source
 
+RATELESS = ("socket://", "loop://")
+"""pyserial's URLs that lead to no line with a rate."""
+
 
 @dataclass(frozen=True, slots=True)
 class Scheme:
@@ -32,17 +35,14 @@ class Scheme:
 
 
 def _serial(address: Address, clock: Clock) -> Source:
-    from gnssmon.sources.finding import DEFAULT_BAUD
+    from gnssmon.sources.finding import open_found
     from gnssmon.sources.serial_port import SerialPort
 
-    return SerialPort(address.text, clock, port=address.target, baud=address.baud or DEFAULT_BAUD)
-
-
-def _url(address: Address, clock: Clock) -> Source:
-    from gnssmon.sources.finding import DEFAULT_BAUD
-    from gnssmon.sources.serial_port import SerialPort
-
-    return SerialPort(address.text, clock, port=address.target, baud=address.baud or DEFAULT_BAUD)
+    if address.target.lower().startswith(RATELESS):
+        return SerialPort(address.text, clock, port=address.target, baud=None)
+    if address.baud is None:
+        return open_found(address.target, address.text, clock)
+    return SerialPort(address.text, clock, port=address.target, baud=address.baud)
 
 
 def _tcp(address: Address, clock: Clock) -> Source:
@@ -87,7 +87,7 @@ def _stdin(address: Address, clock: Clock) -> Source:
 
 SCHEMES: tuple[Scheme, ...] = (
     Scheme("serial", "/dev/ttyUSB0@9600", "a serial port; without @BAUD the rate is found", _serial, may_return=True),
-    Scheme("url", "rfc2217://server:4000", "any URL that pyserial opens", _url, may_return=True),
+    Scheme("url", "rfc2217://server:4000", "any URL that pyserial opens", _serial, may_return=True),
     Scheme("tcp", "tcp://192.168.1.20:10110", "a TCP server", _tcp, may_return=True),
     Scheme("udp", "udp://:10110", "datagrams to a port of this computer; a multicast group is joined", _udp),
     Scheme("log", "site.nmea.gz", "a log file, plain, .gz, .bz2, .xz (.zst from Python 3.14 on)", _log),
@@ -109,3 +109,22 @@ def open_source(text: str, *, clock: Clock) -> Source:
     """Open what ``text`` names (see ``SCHEMES``). Raises SourceError: what, why, what to try, in one line."""
     address = parse_address(text)
     return scheme_of(address).open(address, clock)
+
+
+def hold_source(text: str, *, clock: Clock, give_up_s: float | None = None) -> Source:
+    """Open what ``text`` names and hold on to it: a live source that is lost is opened again when it returns.
+
+    ``give_up_s``: a loss that lasts so long is final; None: never. Logs, pipes and simulations are opened as by
+    ``open_source``. Raises SourceError when it cannot be opened now.
+    """
+    from gnssmon.sources.reconnecting import Reconnecting
+
+    address = parse_address(text)
+    scheme = scheme_of(address)
+    if not scheme.may_return:
+        return scheme.open(address, clock)
+    if scheme.key == "serial":
+        from gnssmon.sources.same_device import SameDevice
+
+        return Reconnecting(SameDevice(address, clock), clock, give_up_s=give_up_s)
+    return Reconnecting(lambda: scheme.open(address, clock), clock, give_up_s=give_up_s)

@@ -10,58 +10,99 @@ import contextlib
 import errno
 import os
 import select
+from collections.abc import Iterator, Sequence
 from pathlib import Path
-from typing import Literal
 
 import serial
 
+from gnssmon.chunks import Chunk
 from gnssmon.clocks import Clock
 from gnssmon.errors import SourceError
+from gnssmon.sources.hearing import Framing, Spoiling
 from gnssmon.sources.source import MOST_BYTES, LiveSource
 
 GATHER_S = 0.01
-"""Wait behind the first byte, so that a burst comes in a few chunks and not in a thousand; arrival times are late by
-at most this. A kernel's 4 kB of line buffer hold 45 ms at 921 600 baud."""
+"""Wait between two looks at a burst: arrival times are late by at most this. A kernel's 4 kB of line buffer hold
+45 ms at 921 600 baud."""
 
-Framing = Literal["8N1", "8N2", "7E1"]
+MOST_GATHER_S = 0.05
+"""A piece ends with the look that brings a line end, or after this: one piece a sentence, not one a byte."""
 
 
 class SerialPort(LiveSource):
     """An open serial line at a known rate."""
 
-    def __init__(self, label: str, clock: Clock, *, port: str, baud: int, framing: Framing = "8N1") -> None:
-        """Open the port for this program alone. Raises SourceError when that fails."""
+    def __init__(
+        self,
+        label: str,
+        clock: Clock,
+        *,
+        port: str,
+        baud: int | None,
+        framing: Framing = "8N1",
+        line: serial.Serial | None = None,
+        heard: Sequence[Chunk] = (),
+    ) -> None:
+        """Open the port for this program alone, unless it is open already (``line``); ``heard`` came before.
+
+        Raises SourceError when it cannot be opened.
+        """
         super().__init__(label, clock)
-        self.baud = baud
-        self._port = opened(port, baud, framing)
+        self.baud = self.rate = baud
+        self.framing: Framing = framing
+        self.spoiled = False
+        """The line made sense and then did not any more: its rate may have changed. Told by SourceError, too."""
+        self._line = opened(port, baud, framing) if line is None else line
+        self._heard = heard
         try:
-            self._descriptor: int | None = self._port.fileno() if os.name == "posix" else None
+            self._descriptor: int | None = self._line.fileno() if os.name == "posix" else None
         except (OSError, AttributeError):
             self._descriptor = None  # loop:// and rfc2217:// are no files: they are polled.
 
+    def chunks(self) -> Iterator[Chunk]:
+        spoiling = Spoiling()
+        for chunk in self._heard:
+            self.consumed += len(chunk.data)
+            spoiling.feed(chunk.data, self._clock.steady())
+            yield chunk
+        for chunk in super().chunks():
+            yield chunk
+            if chunk.data and spoiling.feed(chunk.data, self._clock.steady()):
+                self.spoiled = True
+                self._release()
+                raise SourceError(f"'{self.label}' sends nothing readable any more; its rate may have changed")
+
     def _receive(self, wait_s: float) -> bytes | None:
+        data = b""
         try:
             if self._descriptor is not None and not select.select([self._descriptor], [], [], wait_s)[0]:
                 return b""
-            self._clock.sleep(GATHER_S)
-            return bytes(self._port.read(MOST_BYTES))
+            until = self._clock.steady() + MOST_GATHER_S
+            while True:
+                self._clock.sleep(GATHER_S)
+                data += bytes(self._line.read(MOST_BYTES))
+                if not data or b"\n" in data or len(data) >= MOST_BYTES or self._clock.steady() >= until:
+                    return data
         except (OSError, ValueError, TypeError) as error:
             # pyserial's SerialException is an OSError; a port closed by another thread gives the other two.
+            if data:
+                return data  # The next call meets the same error.
             if self._closing:
                 return None
             raise SourceError(f"'{self.label}' is lost: {lost_because(error)}") from error
 
     def _release(self) -> None:
         with contextlib.suppress(OSError):  # An unplugged device cannot even be closed properly.
-            self._port.close()
+            self._line.close()
 
 
-def opened(port: str, baud: int, framing: Framing = "8N1") -> serial.SerialBase:
-    """The open port, reading without waiting. Raises SourceError with what to do."""
+def opened(port: str, baud: int | None, framing: Framing = "8N1") -> serial.Serial:
+    """The open port, reading without waiting; ``baud`` None where no rate matters. Raises SourceError, with advice."""
     try:
-        line: serial.SerialBase = serial.serial_for_url(
+        # Whatever class opens the URL has the face of ``Serial``.
+        line: serial.Serial = serial.serial_for_url(
             port,
-            baudrate=baud,
+            baudrate=9600 if baud is None else baud,
             bytesize=int(framing[0]),
             parity=framing[1],
             stopbits=int(framing[2]),
@@ -73,7 +114,7 @@ def opened(port: str, baud: int, framing: Framing = "8N1") -> serial.SerialBase:
     return line
 
 
-def closed_because(error: Exception, port: str, baud: int) -> str:
+def closed_because(error: Exception, port: str, baud: int | None) -> str:
     """Why a port would not open, and what to try."""
     number = error.errno if isinstance(error, OSError) else None
     if number in (errno.EAGAIN, errno.EBUSY) or "lock" in str(error):
