@@ -43,6 +43,10 @@ class Between(Source):
                 self._mirror()
                 if self._over:
                     continue
+                if self.kind == "live":
+                    # Nobody cuts the present, and half a line must not wait for its other half.
+                    yield chunk
+                    continue
                 tape.push(chunk)
                 held += self._starts.feed(chunk.data)
                 if self._undated and tape.end - tape.start < BLOCK_BYTES:

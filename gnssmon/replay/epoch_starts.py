@@ -72,6 +72,10 @@ class EpochStarts:
         self._rest, self._rest_offset = block[end:], base + end
         return starts
 
+    def skip(self, to_offset: int) -> None:
+        """Go on at another offset, further on: what lies between is not looked at."""
+        self._rest, self._rest_offset = b"", to_offset
+
     def finish(self) -> list[EpochStart]:
         """The start that an unfinished last line may hold."""
         starts = self._starts(self._rest + b"\n", self._rest_offset)
