@@ -7,7 +7,6 @@ import re
 from collections import deque
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -15,12 +14,10 @@ from gnssmon.constellations.identity import SYSTEM_STEP, label, signal_label
 from gnssmon.epochs.batch import KINDS, EpochBatch, Ints
 from gnssmon.epochs.in_view import InView
 from gnssmon.epochs.rows import Rows
-from gnssmon.epochs.statements import LEADING, heading_rows, position_rows, velocity_rows
+from gnssmon.epochs.statements import LEADING, WHOLE, heading_rows, position_rows, velocity_rows
 from gnssmon.nmea.columns import Columns, Sentences, Table
+from gnssmon.pipeline import Block
 from gnssmon.printable import printable
-
-if TYPE_CHECKING:
-    from gnssmon.pipeline import Block
 
 MOST_LINES = 200
 """As many as anyone scrolls back on a screen while sentences run."""
@@ -97,6 +94,7 @@ class Receiver:
     def __init__(self) -> None:
         self._newest = -1  # sequence of the last sentence
         self._latest: dict[tuple[str, str], tuple[int, Rows]] = {}  # by group and formatter: sequence and the row
+        self._whole_gns = -1  # sequence of the last GNS of the combined solution
         self._received_s = math.nan
         self._now: EpochBatch | None = None  # the latest epoch alone
         self._last_fix_axis_ms: int | None = None
@@ -134,7 +132,7 @@ class Receiver:
         tables = {name: table for name, table in columns.tables.items() if len(table)}
         for group, (formatters, reader) in _GROUPS.items():
             for name in formatters:
-                if name in tables:
+                if name in tables and self._speaks(tables[name]):
                     row = _last(tables[name])
                     self._latest[group, name] = (int(row.sequence[0]), reader(name, row, row.sequence))
         if "TXT" in tables:
@@ -142,6 +140,13 @@ class Receiver:
         if "DTM" in tables:
             datum = bytes(tables["DTM"].fields["datum"][-1])
             self._datum = printable(datum) if datum else None
+
+    def _speaks(self, table: Table) -> bool:
+        """Whether a table's last row replaces what was known: GNS of single systems do not replace the whole one."""
+        if table.formatter != "GNS" or (table.talker == WHOLE).any():
+            self._whole_gns = int(table.sequence[-1]) if table.formatter == "GNS" else self._whole_gns
+            return True
+        return self._whole_gns < 0 or self._newest - self._whole_gns > LONGEST_SILENCE
 
     def _take_epochs(self, closed: EpochBatch, opened: EpochBatch) -> None:
         for batch in (closed, opened):
@@ -249,7 +254,7 @@ def _dop(batch: EpochBatch, epoch: int) -> tuple[float | None, float | None, flo
 def _last(table: Table) -> Table:
     """The last row as a table; of GNS the last one of the whole solution, where there is one."""
     row = len(table) - 1
-    if table.formatter == "GNS" and len(whole := np.flatnonzero(table.talker == b"GN")):
+    if table.formatter == "GNS" and len(whole := np.flatnonzero(table.talker == WHOLE)):
         row = int(whole[-1])
     one = slice(row, row + 1)
     return Table(

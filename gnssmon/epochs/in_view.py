@@ -25,6 +25,9 @@ UNKNOWN_PERIOD_MS = 10_000
 MOST_SETS = 64
 """Talkers times signals; no receiver has so many, but noise without checksums might."""
 
+MOST_PARTS = 32
+"""Of one set; the standard allows 9."""
+
 Key = tuple[bytes, int]
 
 
@@ -86,7 +89,7 @@ class InView:
             came, groups = self._parts.pop(key, (0, []))
             if number == 1:
                 groups = []
-            elif number != came + 1:
+            elif number != came + 1 or number > MOST_PARTS:
                 continue  # a part is missing: the set before stays until the next whole one
             groups = groups + listed[row]
             if number < total and len(self._parts) < MOST_SETS:

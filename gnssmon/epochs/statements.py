@@ -24,6 +24,9 @@ CLOCK_RANK = 0
 LEADING = TIMED[:4]
 """Sentences with a position, in order of preference."""
 
+WHOLE = b"GN"
+"""Talker of a solution from several systems together."""
+
 OTHERS = (GALILEO, BEIDOU, QZSS, NAVIC)
 """Systems that count from 1 since NMEA 4.10, and in makers' numberings before."""
 
@@ -100,7 +103,7 @@ def position_rows(formatter: str, table: Table, epoch: Ints) -> Rows:
         quality = _of_indicator(fields["quality"])
     elif formatter == "GNS":
         quality = _of_letters(fields["modes"])
-        rank = rank + (table.talker == b"GN")  # the whole solution before those of single systems
+        rank = rank + (table.talker == WHOLE)  # the whole solution before those of single systems
     else:
         quality = _of_status(fields["status"], fields["mode"])
 
