@@ -44,7 +44,7 @@ class EpochBatch:
     axis_ms: Ints
     """The time axis of all statistics: milliseconds, strictly continuous through midnight and leap seconds, starting
     at the first epoch's time of day (undated stream) or at its UTC since 1970. Steps back only where the receiver's
-    own time does."""
+    own time does. An epoch without any time shares the place of the one before it, or stands at 0 at the start."""
     utc_ms: Ints
     """UTC since 1970-01-01, ms; -1 where no date is known yet."""
     counted: npt.NDArray[np.bool_]
