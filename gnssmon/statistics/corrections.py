@@ -98,6 +98,9 @@ class Corrections:
             self._answers[key] = self._summarise(span, confidence)
         return dict(self._answers[key])
 
+    def picture(self, span: Span = EVERYTHING) -> None:
+        """Drawn with the fix, minute by minute."""
+
     def _summarise(self, span: Span, confidence: float) -> dict[str, Estimate]:
         answers = {quantity.name: NOTHING for quantity in self.QUANTITIES}
         runs = self._use.within(span.from_ms, span.to_ms)

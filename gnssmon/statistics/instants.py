@@ -16,8 +16,8 @@ from enum import Enum
 import numpy as np
 import numpy.typing as npt
 
-from gnssmon.constellations import identity
 from gnssmon.epochs.batch import EpochBatch
+from gnssmon.statistics.grid import LABELS, grid_of, label_numbers, strongest_mean
 from gnssmon.statistics.subject import Site
 
 Floats = npt.NDArray[np.float64]
@@ -65,32 +65,16 @@ def _levels(batch: EpochBatch, label: str | None = None) -> tuple[Floats, Floats
     rows = batch.signals
     heard = np.isfinite(rows.cn0_dbhz)
     if label is not None:
-        heard &= identity.signal_labels(rows.satellite, rows.signal) == label
+        heard &= label_numbers(rows.satellite, rows.signal) == (LABELS.index(label) if label in LABELS else -1)
     epoch = rows.epoch[heard]
-    return (
-        np.bincount(epoch, weights=rows.cn0_dbhz[heard], minlength=len(batch)),
-        np.bincount(epoch, minlength=len(batch)).astype(np.float64),
-    )
+    total = np.bincount(epoch, weights=rows.cn0_dbhz[heard].astype(np.float64), minlength=len(batch))
+    return total.astype(np.float64), np.bincount(epoch, minlength=len(batch)).astype(np.float64)
 
 
 def _strongest4(batch: EpochBatch, site: Site) -> tuple[Floats, Floats]:
-    """Mean of the four strongest satellites (each by its best signal) of every epoch that lists four or more."""
-    rows = batch.signals
-    heard = np.isfinite(rows.cn0_dbhz)
-    order = np.lexsort((-rows.cn0_dbhz[heard], rows.satellite[heard], rows.epoch[heard]))
-    epoch, satellite, cn0_dbhz = (column[heard][order] for column in (rows.epoch, rows.satellite, rows.cn0_dbhz))
-    best = np.ones(len(epoch), dtype=bool)
-    best[1:] = (epoch[1:] != epoch[:-1]) | (satellite[1:] != satellite[:-1])
-    epoch, cn0_dbhz = epoch[best], cn0_dbhz[best].astype(np.float64)
-    order = np.lexsort((-cn0_dbhz, epoch))
-    epoch, cn0_dbhz = epoch[order], cn0_dbhz[order]
-    first = np.searchsorted(epoch, np.arange(len(batch)))
-    rank = np.arange(len(epoch)) - first[epoch]
-    top = rank < 4
-    count = np.bincount(epoch[top], minlength=len(batch))
-    mean = np.bincount(epoch[top], weights=cn0_dbhz[top], minlength=len(batch)) / 4.0
-    enough = count == 4
-    return np.where(enough, mean, 0.0), enough.astype(np.float64)
+    """Mean of the four strongest satellites of every epoch that has as many."""
+    mean = strongest_mean(grid_of(batch))
+    return np.nan_to_num(mean), np.isfinite(mean).astype(np.float64)
 
 
 def _in_view(batch: EpochBatch, site: Site) -> tuple[Floats, Floats]:
@@ -146,6 +130,12 @@ def find(name: str) -> Instant | None:
     return None
 
 
+_FUNCTIONS: dict[Combine, Callable[[Floats], np.floating]] = {
+    Combine.LARGEST: np.max,
+    Combine.SMALLEST: np.min,
+    Combine.MEDIAN: np.median,
+}
+
 SHORTEST_STEP_MS = 10
 """Steps below this are repeats or a clock being set, not a rate: 50 Hz is the fastest stream."""
 
@@ -192,7 +182,7 @@ class Sliding:
         axis_ms = np.maximum.accumulate(self._axis_ms)
         low = np.searchsorted(axis_ms, instants_ms - self._window_ms, side="right")
         high = np.searchsorted(axis_ms, instants_ms, side="right")
-        # Rounded, because the sums begin where the last window began: their last bits must not tell how a stream was cut.
+        # Rounded: the sums begin where the last window began, and their last bits must not tell of that.
         values = np.round(self._combined(low, high), 9)
         if len(instants_ms) and low[-1] > 0:
             keep = slice(int(min(low[-1], len(axis_ms) - 1)), None)
@@ -207,8 +197,10 @@ class Sliding:
             total, weight = top[high] - top[low], bottom[high] - bottom[low]
             if self._name in PER_WINDOW:
                 return self._against_window(total, high)
-            return np.divide(total, weight, out=np.full(len(low), np.nan), where=weight > 0)
-        function = {Combine.LARGEST: np.max, Combine.SMALLEST: np.min, Combine.MEDIAN: np.median}[self._instant.combine]
+            ratio = np.full(len(low), np.nan)
+            np.divide(total, weight, out=ratio, where=weight > 0)
+            return ratio
+        function = _FUNCTIONS[self._instant.combine]
         values = np.full(len(low), np.nan)
         for i, (first, last) in enumerate(zip(low, high, strict=True)):
             known = self._top[first:last][self._bottom[first:last] > 0]
