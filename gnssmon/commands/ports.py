@@ -25,7 +25,7 @@ def command(only_list: bool, as_json: bool) -> int:
     rows: list[tuple[Port, Found | SourceError | None]] = [(port, None) for port in ports]
     if ports and not only_list:
         if not as_json and sys.stderr.isatty():
-            click.echo(f"listening to {len(ports)} ports, at most {SEARCH_S:.0f} s …", err=True)
+            click.echo(f"listening to {len(ports)} ports, at most {SEARCH_S + 0.5:.0f} s …", err=True)
         rows = [*find_ports(SystemClock(), ports=ports)]
     if as_json:
         click.echo(json.dumps([_row(port.device, port.description, found) for port, found in rows], indent=1))

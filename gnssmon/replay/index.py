@@ -72,7 +72,7 @@ def build_index(source: Source) -> Index:
 
 
 def _look(starts: EpochStarts, offset: int, piece: bytes) -> list[EpochStart]:
-    """The epochs that start in a piece; its first sentences may belong to one that started before."""
+    """The epochs that start in a piece; its first sentences may belong to one that started before (not at offset 0)."""
     starts.skip(offset)
     found = starts.feed(piece)
-    return found[1:] or found
+    return (found[1:] or found) if offset else found

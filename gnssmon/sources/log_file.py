@@ -113,7 +113,8 @@ class LogFile(Source):
                 if self._closing:
                     return
                 yield Chunk(block)
-            self.sha256 = self._hash.hexdigest()
+            if not self._closing:
+                self.sha256 = self._hash.hexdigest()
         finally:
             self.state = "ended"
             self._file.close()
