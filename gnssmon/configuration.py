@@ -45,7 +45,8 @@ def load(cls: type[T], text_or_path: str | Path, *, name: str | None = None) -> 
     ``name`` is how errors call the file; a path is its own name. Raises ConfigurationError.
     """
     name = name or (str(text_or_path) if isinstance(text_or_path, Path) else "settings")
-    text = _contents(text_or_path, name) if isinstance(text_or_path, Path) else text_or_path
+    text = contents(text_or_path) if isinstance(text_or_path, Path) else text_or_path
+    text = text.removeprefix("\ufeff")  # some editors begin a file with it
     try:
         document = tomllib.loads(text)
     except (tomllib.TOMLDecodeError, RecursionError) as error:
@@ -84,19 +85,20 @@ class _Mistake(Exception):
         self.reason = reason
 
 
-def _contents(path: Path, name: str) -> str:
+def contents(path: Path) -> str:
+    """The text of a settings file, exactly as it stands; raises ConfigurationError."""
     try:
         with path.open("rb") as file:
             data = file.read(LARGEST_BYTES + 1)
     except OSError as error:
-        raise ConfigurationError(f"{name}: cannot be read: {error.strerror or error}") from None
+        raise ConfigurationError(f"{path}: cannot be read: {error.strerror or error}") from None
     if len(data) > LARGEST_BYTES:
-        raise ConfigurationError(f"{name}: larger than {LARGEST_BYTES} bytes: this is no settings file")
+        raise ConfigurationError(f"{path}: larger than {LARGEST_BYTES} bytes: this is no settings file")
     try:
-        return data.decode("utf-8-sig")
+        return data.decode("utf-8")
     except UnicodeDecodeError as error:
         line = data.count(b"\n", 0, error.start) + 1
-        raise ConfigurationError(f"{name}, line {line}: not UTF-8 text: this is no settings file") from None
+        raise ConfigurationError(f"{path}, line {line}: not UTF-8 text: this is no settings file") from None
 
 
 def _table(cls: Any, values: object, where: Where) -> object:

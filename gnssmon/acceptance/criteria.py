@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 from collections.abc import Iterable
 from dataclasses import dataclass, field, fields, replace
 from importlib import resources
@@ -9,7 +10,7 @@ from pathlib import Path
 from typing import Annotated, Literal
 
 from gnssmon.alarms.rules import AlarmRule, default_alarms
-from gnssmon.configuration import Duration, load, nearest
+from gnssmon.configuration import Duration, contents, load, nearest
 from gnssmon.errors import ConfigurationError
 from gnssmon.printable import printable
 from gnssmon.quantities import DEFAULT_CONFIDENCE, Quantity
@@ -133,6 +134,8 @@ class CriteriaSet:
     site: SiteSettings = field(default_factory=SiteSettings)
     criteria: tuple[Criterion, ...] = ()
     alarms: tuple[AlarmRule, ...] = ()
+    sha256: str = ""
+    """Of the file or preset."""
 
     @property
     def confidences(self) -> tuple[float, ...]:
@@ -173,7 +176,7 @@ def load_criteria(text: str | None) -> CriteriaSet:
     """
     name = text or DEFAULT
     if name in preset_names():
-        file = load(_File, preset_text(name), name=f"preset '{name}'")
+        text, called = preset_text(name), f"preset '{name}'"
     else:
         path = Path(name)
         if not path.exists():
@@ -181,7 +184,8 @@ def load_criteria(text: str | None) -> CriteriaSet:
                 f"criteria '{printable(name, 200)}': there is no such file and no preset of that name; "
                 f"nearest preset: {nearest(name, preset_names())}; presets: {', '.join(preset_names())}"
             )
-        file = load(_File, path)
+        text, called = contents(path), name
+    file = load(_File, text, name=called)
     return CriteriaSet(
         name=name,
         title=file.title,
@@ -189,6 +193,7 @@ def load_criteria(text: str | None) -> CriteriaSet:
         site=file.site,
         criteria=file.criterion,
         alarms=file.alarm or default_alarms(),
+        sha256=hashlib.sha256(text.encode()).hexdigest(),
     )
 
 

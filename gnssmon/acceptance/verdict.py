@@ -57,6 +57,8 @@ class Verdict:
     criteria_name: str
     """File or preset, or ``default``."""
     needed_s: float | None = None
+    criteria_sha256: str = ""
+    """Of the file or preset."""
 
 
 def judge(
@@ -83,6 +85,7 @@ def judge(
         criteria=judged,
         criteria_name=criteria_set.name,
         needed_s=max(forecasts) if forecasts and len(forecasts) == len(undecided) else None,
+        criteria_sha256=criteria_set.sha256,
     )
 
 

@@ -48,6 +48,7 @@ def result(snapshot: Snapshot) -> Json:
         "verdict": verdict.verdict,
         "needed_s": _number(verdict.needed_s),
         "criteria_set": verdict.criteria_name,
+        "criteria_sha256": verdict.criteria_sha256 or None,
         "criteria": [_criterion(judged) for judged in verdict.criteria],
         "findings": [_finding(finding) for finding in snapshot.findings],
         "quantities": _quantities(snapshot.estimates),

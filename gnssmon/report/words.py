@@ -27,6 +27,8 @@ def number(value: float | None, unit: str, name: str = "") -> str:
     if unit in ("count", "1") and float(value).is_integer():
         return f"{value:.0f}"
     decimals = PLACES.get(name, DECIMALS.get(unit, 3))
+    if unit == "s" and abs(value) >= 100.0:
+        decimals = 0
     text = f"{value:.{decimals}f}"
     if unit == "share" and 0.0 < abs(value) < 0.005:
         return "< 0.01"

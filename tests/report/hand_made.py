@@ -107,7 +107,7 @@ def sky() -> SkyPicture:
             unseen = 200 < middle < 215 and ring == 1
             state.append(
                 CELL_UNREACHABLE
-                if hole and False
+                if hole
                 else CELL_UNKNOWN
                 if unseen
                 else CELL_BLOCKED
