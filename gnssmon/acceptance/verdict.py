@@ -68,21 +68,24 @@ def judge(
     duration_s: float,
     confidence: Callable[[float], float] = lambda asked: asked,
 ) -> Verdict:
-    """Hold every criterion against the estimates of a run of ``duration_s``.
+    """Hold every criterion against the estimates of a run of ``duration_s``, first epoch to last.
 
     ``confidence`` turns the one that a criterion asks for into the one that is used: a run that is looked at often
     passes ``sequential.Looks.confidence``.
     """
-    judged = tuple(
-        _judged(criterion, estimates(confidence(criterion.confidence)), duration_s, confidence(criterion.confidence))
-        for criterion in criteria_set.criteria
-    )
+    judged = []
+    for criterion in criteria_set.criteria:
+        used = confidence(criterion.confidence)
+        known = estimates(used)
+        # A day at 1 Hz is 86 400 epochs, and one second less from the first to the last.
+        interval_s = _number(known.get("stream.interval_s", NOTHING).value) or 0.0
+        judged.append(_judged(criterion, known, duration_s + interval_s, used))
     results = {one.result for one in judged}
     undecided = [one.needed_s for one in judged if one.result == "undecided"]
     forecasts = [seconds for seconds in undecided if seconds is not None]
     return Verdict(
         verdict="reject" if "not met" in results else "accept" if results == {"met"} else "undecided",
-        criteria=judged,
+        criteria=tuple(judged),
         criteria_name=criteria_set.name,
         needed_s=max(forecasts) if forecasts and len(forecasts) == len(undecided) else None,
         criteria_sha256=criteria_set.sha256,
