@@ -74,9 +74,12 @@ def judge(
     passes ``sequential.Looks.confidence``.
     """
     judged = []
+    answers: dict[float, Mapping[str, Estimate]] = {}
     for criterion in criteria_set.criteria:
         used = confidence(criterion.confidence)
-        known = estimates(used)
+        if used not in answers:
+            answers[used] = estimates(used)
+        known = answers[used]
         # A day at 1 Hz is 86 400 epochs, and one second less from the first to the last.
         interval_s = _number(known.get("stream.interval_s", NOTHING).value) or 0.0
         judged.append(_judged(criterion, known, duration_s + interval_s, used))
