@@ -6,6 +6,7 @@ Matplotlib is imported only when a figure is drawn.
 from __future__ import annotations
 
 import io
+import re
 from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Any
@@ -85,14 +86,15 @@ def svg(drawing: Drawing, snapshot: Snapshot) -> str | None:
     import matplotlib
     from matplotlib.figure import Figure
 
-    # The salt keeps the identifiers of several figures on one page apart, and the same from run to run.
-    style: Any = {**STYLE, "svg.hashsalt": drawing.key}
+    # With a fixed salt the identifiers are the same from run to run; below they are kept apart from other figures'.
+    style: Any = {**STYLE, "svg.hashsalt": "gnssmon"}
     with matplotlib.rc_context(style):
         figure = Figure(figsize=(drawing.width_mm / 25.4, drawing.height_mm / 25.4), layout="constrained")
         drawing.draw(figure, snapshot)
         out = io.StringIO()
         figure.savefig(out, format="svg", metadata=dict.fromkeys(("Date", "Creator", "Format", "Type")))
     text = out.getvalue()
+    text = re.sub(r'( id="|href="#|url\(#)', rf"\1{drawing.key}-", text)
     return text[text.index("<svg") :].replace("<svg ", f'<svg role="img" aria-label="{drawing.title}" ', 1)
 
 
