@@ -11,6 +11,7 @@ from gnssmon.estimators import changes, long_run, uncertainty
 from gnssmon.estimators.ellipse import ellipse, gaussian_radius
 from gnssmon.estimators.long_run import Error, SlowError
 from gnssmon.estimators.moments import Moments
+from gnssmon.estimators.uncertainty import Scale
 from gnssmon.geodesy import local_frame
 from gnssmon.geodesy.local_frame import Geographic
 from gnssmon.quantities import NOTHING, Estimate, exact
@@ -104,8 +105,8 @@ class Window:
                 continue
             square = (values - values.mean()) ** 2
             std_m = math.sqrt(float(square.sum()) / (len(values) - 1))
-            factors = self._factors(square, self._effective[axis])
-            answers[f"scatter.{name}_std_m"] = self._scaled(std_m, factors, self._effective[axis])
+            scale = self._scale(square, self._horizontal_effective if axis < 2 else self._effective[2])
+            answers[f"scatter.{name}_std_m"] = self._scaled(std_m, scale, self._effective[axis])
             median = float(np.median(values))
             robust_m = changes.MAD_TO_SIGMA * float(np.median(np.abs(values - median)))
             answers[f"scatter.{name}_robust_std_m"] = self._estimate(robust_m, None, len(values))
@@ -114,18 +115,18 @@ class Window:
         moments.update(self._cloud.enu_m[:, :2])
         major_m, minor_m, azimuth_deg = ellipse(moments.covariance)
         drms_m = math.hypot(major_m, minor_m)
-        factors = self._factors(self._distance_squared(), self._horizontal_effective)
+        scale = self._scale(self._distance_squared(), self._horizontal_effective)
         for name, value in (
             ("drms", drms_m),
             ("drms2", 2.0 * drms_m),
             ("ellipse_major", major_m),
             ("ellipse_minor", minor_m),
         ):
-            answers[f"scatter.{name}_m"] = self._scaled(value, factors, self._horizontal_effective)
+            answers[f"scatter.{name}_m"] = self._scaled(value, scale, self._horizontal_effective)
         answers["scatter.ellipse_azimuth_deg"] = self._estimate(azimuth_deg, None, self._count)
         for name, share in (("cep50", 0.50), ("r95", 0.95)):
             radius_m = gaussian_radius(share, major_m, minor_m)
-            answers[f"scatter.{name}_gaussian_m"] = self._scaled(radius_m, factors, self._horizontal_effective)
+            answers[f"scatter.{name}_gaussian_m"] = self._scaled(radius_m, scale, self._horizontal_effective)
         return answers
 
     def rings(self) -> dict[str, Estimate]:
@@ -204,13 +205,13 @@ class Window:
         interval = None if half is None else (value - half * unit, value + half * unit)
         return self._estimate(value, interval, len(self._axis[axis]), self._effective[axis])
 
-    def _factors(self, square: Floats, effective: float) -> tuple[float, float] | None:
+    def _scale(self, square: Floats, effective: float) -> Scale | None:
         """For the interval of any spread that grows with the root of the mean ``square``."""
         (error,) = long_run.mean_errors([square])
-        return uncertainty.scale_factors(float(square.mean()), error, self._confidence, effective=effective)
+        return uncertainty.scale(float(square.mean()), error, self._confidence, effective=effective)
 
-    def _scaled(self, value: float, factors: tuple[float, float] | None, effective: float) -> Estimate:
-        interval = None if factors is None else (value * factors[0], value * factors[1])
+    def _scaled(self, value: float, scale: Scale | None, effective: float) -> Estimate:
+        interval = None if scale is None else (value * scale.low, value * scale.high)
         return self._estimate(value, interval, self._count, effective)
 
     def _quantiles(self, distance_m: Floats, shares: dict[str, float], effective: float) -> dict[str, Estimate]:
@@ -218,11 +219,11 @@ class Window:
         values = {name: uncertainty.ordered_quantile(ordered, share) for name, share in shares.items()}
         square = distance_m * distance_m
         spread, *errors = long_run.mean_errors([square, *(distance_m > value for value in values.values())])
-        factors = uncertainty.scale_factors(float(square.mean()), spread, self._confidence, effective=effective)
+        scale = uncertainty.scale(float(square.mean()), spread, self._confidence, effective=effective)
         answers = {}
         for (name, share), error in zip(shares.items(), errors, strict=True):
-            trials = uncertainty.effective_trials(share, error, self._confidence, len(ordered))
-            interval = uncertainty.quantile_interval(ordered, share, trials, self._confidence, factors=factors)
+            trials = uncertainty.effective_trials(share, error, self._confidence, len(ordered), effective=effective)
+            interval = uncertainty.quantile_interval(ordered, share, trials, self._confidence, spread=scale)
             answers[f"scatter.{name}_m"] = self._estimate(values[name], interval, len(ordered), trials)
         return answers
 

@@ -152,7 +152,7 @@ class SignalLevel:
         number = by_bin.sum(axis=2)
         mean = _ratio(sums[:, heard] / 1000.0, number)
         expected = _ratio((stated * np.nan_to_num(curve)).sum(axis=2), stated.sum(axis=2))
-        overall = _ratio((np.nan_to_num(curve) * stated.sum(axis=0)).sum(axis=1), stated.sum(axis=(0, 1)))
+        overall = _ratio((np.nan_to_num(curve) * stated.sum(axis=0)).sum(axis=1), stated.sum(axis=(0, 2)))
         base = curve[:, REFERENCE_BIN] if len(heard) else np.empty(0)
         base = np.where(np.isfinite(base), base, overall)
         reduced = mean - expected + base

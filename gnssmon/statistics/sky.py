@@ -48,6 +48,8 @@ NEIGHBOURS = 0.5
 PASS_MINUTES = 15
 """Rows of one satellite further apart than this belong to different passes."""
 HALF = 0.5
+HIGH_DEG = 40.0
+"""A satellite above this is hidden by hardly anything."""
 FEWEST_DEGREES = 5
 """Elevations that must have been looked at in a sector before a horizon is given."""
 
@@ -226,6 +228,7 @@ class Sky:
             inside &= (minute + 1) * 60_000 > span.from_ms
         if span.to_ms is not None:
             inside &= minute * 60_000 < span.to_ms
+        inside &= ~_never_heard(rows)
         return rows if inside.all() else {name: column[inside] for name, column in rows.items()}
 
     def _cells(self, rows: dict[str, npt.NDArray[np.generic]]) -> tuple[npt.NDArray[np.uint8], npt.NDArray[np.bool_]]:
@@ -303,6 +306,17 @@ def _by_minute(
         "tracked": np.minimum(tracked, 255),
         "cn0_dbhz": mean,
     }
+
+
+def _never_heard(rows: dict[str, npt.NDArray[np.generic]]) -> npt.NDArray[np.bool_]:
+    """Rows of satellites that stood high in the sky and were never heard at all: switched off, unhealthy, or not
+    received by this receiver. They say nothing about the site."""
+    satellite = rows["satellite"].astype(np.int64)
+    heard = np.bincount(satellite, weights=rows["tracked"].astype(np.float64), minlength=CODES)
+    highest = np.full(CODES, -90.0)
+    np.maximum.at(highest, satellite, rows["elevation_deg"].astype(np.float64))
+    silent: npt.NDArray[np.bool_] = ((heard == 0) & (highest >= HIGH_DEG))[satellite]
+    return silent
 
 
 def _residuals(rows: dict[str, npt.NDArray[np.generic]]) -> Floats:
