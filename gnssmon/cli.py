@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import importlib
 import sys
+import traceback
 
 import click
 
@@ -13,6 +14,9 @@ from gnssmon.printable import printable
 
 ACCEPTED, REJECTED, WRONG_USAGE, UNDECIDED, SOURCE_FAILED, INTERRUPTED = 0, 1, 2, 3, 4, 130
 """Exit codes of the contract."""
+
+OWN_FAULT = 70
+"""A fault of the program itself (EX_SOFTWARE of BSD's sysexits): Python's own 1 would read as a rejection."""
 
 VERBS = {
     "demo": "the dashboard on a built-in simulated site",
@@ -77,4 +81,8 @@ def main(arguments: list[str] | None = None) -> None:
         # The reader of our standard output went away (``| head``): nobody is left to tell.
         sys.stderr.close()
         code = SOURCE_FAILED
+    except Exception:
+        traceback.print_exc()
+        click.echo("gnssmon: this is a fault of gnssmon itself; nothing was judged", err=True)
+        code = OWN_FAULT
     sys.exit(code if isinstance(code, int) else ACCEPTED)

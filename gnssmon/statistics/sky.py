@@ -340,6 +340,8 @@ def _residuals(rows: dict[str, npt.NDArray[np.generic]]) -> Floats:
 
 def _tracks(rows: dict[str, npt.NDArray[np.generic]]) -> tuple[Track, ...]:
     """Each satellite's way over the sky, thinned evenly to MOST_POINTS in all."""
+    if not len(rows["minute"]):
+        return ()
     every = max(1, -(-len(rows["minute"]) // MOST_POINTS))
     minute = rows["minute"].view(np.int64)
     kept = minute % every == 0
