@@ -180,11 +180,11 @@ def _forecast(criterion: Criterion, value: float, interval: tuple[float, float],
 
 
 def in_words(seconds: float) -> str:
-    """A length of time as people say it: ``45 s``, ``12 min``, ``3 h 20 min``, ``2 d 4 h``."""
+    """A length of time as people say it: ``45 s``, ``12 min``, ``1 h 20 min``, ``2 d 4 h``."""
     if seconds < 90:
         return f"{seconds:.0f} s"
     minutes = round(seconds / 60)
-    if minutes < 90:
+    if minutes < 60:
         return f"{minutes} min"
     hours, minutes = divmod(minutes, 60)
     if hours < 48:

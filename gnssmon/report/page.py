@@ -64,7 +64,8 @@ def _quantities(result: Mapping[str, Any]) -> list[dict[str, str]]:
         if isinstance(value, list):
             shown, ends = " ".join(words.number(part, "count") for part in value), ""
         else:
-            shown, ends = words.with_unit(value, unit, name), words.interval(result["intervals"].get(name), unit, name)
+            ends = words.interval(result["intervals"][name], unit, name) if name in result["intervals"] else "–"
+            shown = words.with_unit(value, unit, name)
         rows.append({"name": name, "value": shown, "interval": ends, "meaning": quantity.meaning})
     return rows
 

@@ -173,7 +173,7 @@ def test_widening_an_interval_never_decides(value, below, above, limit):
         (0, "0 s"),
         (89, "89 s"),
         (90, "2 min"),
-        (5340, "89 min"),
+        (3599, "1 h"),
         (12_000, "3 h 20 min"),
         (7200, "2 h"),
         (187_200, "2 d 4 h"),

@@ -101,7 +101,7 @@ SCATTER = Drawing(
     caption="Each point is one epoch. CEP50 and R95 hold 50 % and 95 % of the points about their mean; the ellipse "
     "would hold 95 % of normally distributed errors.",
     width_mm=HALF_MM,
-    height_mm=100.0,
+    height_mm=96.0,
     drawable=_drawable,
     draw=_draw,
 )

@@ -65,7 +65,7 @@ BY_ELEVATION = Drawing(
     caption="Mean C/N0 in steps of 5 degrees, by system letter and band (G1: GPS L1). A good antenna rises smoothly "
     "towards the zenith. Makes of receivers differ by 2 to 3 dB.",
     width_mm=HALF_MM,
-    height_mm=100.0,
+    height_mm=96.0,
     drawable=lambda snapshot: bool(snapshot.pictures.level.count.any()),
     draw=_draw_by_elevation,
 )

@@ -32,7 +32,7 @@ CELLS = {
     CELL_UNREACHABLE: ("no satellite passes", "#e6e6e6", "..."),
 }
 MOST_NAMED = 45
-"""With more tracks their names would cover the picture."""
+"""With more satellites received their names would cover the picture."""
 LARGEST_STEP_DEG = 15.0
 """A satellite's next point farther off than this belongs to another pass."""
 
@@ -44,6 +44,7 @@ def _draw_tracks(figure: Any, snapshot: Snapshot) -> None:
     axes = figure.subplots()
     dome(axes)
     _horizon(axes, picture)
+    named = sum(bool(track.tracked.any()) for track in picture.tracks) <= MOST_NAMED
     systems: dict[str, str] = {}
     for track in picture.tracks:
         letter = track.satellite[:1]
@@ -55,8 +56,18 @@ def _draw_tracks(figure: Any, snapshot: Snapshot) -> None:
         axes.plot(
             np.where(track.tracked, np.nan, x), np.where(track.tracked, np.nan, y), color=INK, linewidth=0.6, ls=":"
         )
-        if len(picture.tracks) <= MOST_NAMED and len(x):
-            axes.annotate(track.satellite, (x[-1], y[-1]), fontsize=5, color=systems[letter], ha="center", zorder=7)
+        if named and track.tracked.any():
+            last = np.flatnonzero(track.tracked)[-1]
+            place = on_dome(track.azimuth_deg[last:][:1], track.elevation_deg[last:][:1])
+            axes.annotate(
+                track.satellite,
+                (place[0][0], place[1][0]),
+                xytext=(2, 2),
+                textcoords="offset points",
+                fontsize=4.5,
+                color=systems[letter],
+                zorder=7,
+            )
     _mask(axes, picture)
     handles = [Patch(color=systems[letter], label=SYSTEMS.get(letter, "unknown")) for letter in sorted(systems)]
     handles += [
@@ -129,7 +140,7 @@ TRACKS = Drawing(
     caption="Where satellites passed; dotted: listed without a signal. Grey: estimated horizon. Dashed: the mask. "
     "North is up, the zenith in the middle.",
     width_mm=HALF_MM,
-    height_mm=100.0,
+    height_mm=96.0,
     drawable=lambda snapshot: len(snapshot.pictures.sky.tracks) > 0,
     draw=_draw_tracks,
 )
@@ -139,7 +150,7 @@ COVERAGE = Drawing(
     caption="Equal pieces of sky: signals received, received in part, satellites without a signal, nothing known yet, "
     "or out of every satellite's reach.",
     width_mm=HALF_MM,
-    height_mm=100.0,
+    height_mm=96.0,
     drawable=lambda snapshot: len(snapshot.pictures.sky.state) > 0,
     draw=_draw_coverage,
 )
