@@ -96,7 +96,7 @@ class Line:
             if self._abandoned:
                 return False
             last = self._waiting[-1] if self._waiting else None
-            if last and len(self._waiting) >= LIVE_CHUNKS and len(last.data) + len(chunk.data) <= JOINED_BYTES:
+            if last is not None and len(self._waiting) >= LIVE_CHUNKS and _may_join(last, chunk):
                 self._waiting[-1] = joined((last, chunk))
             else:
                 self._waiting.append(chunk)
@@ -116,7 +116,7 @@ class Line:
                 return None
             chunks = [self._waiting.popleft()]
             size = len(chunks[0].data)
-            while self._live and self._waiting and size + len(self._waiting[0].data) <= JOINED_BYTES:
+            while self._live and self._waiting and _may_join(chunks[0], self._waiting[0], size):
                 chunks.append(self._waiting.popleft())
                 size += len(chunks[-1].data)
             self._bytes -= size
@@ -145,6 +145,12 @@ class Line:
         if self._live:
             return self._bytes >= LIVE_BYTES
         return len(self._waiting) >= LOG_CHUNKS
+
+
+def _may_join(first: Chunk, second: Chunk, size: int | None = None) -> bool:
+    """Bytes are joined with bytes and silence with silence: an empty chunk means something by itself."""
+    size = len(first.data) if size is None else size
+    return bool(first.data) == bool(second.data) and size + len(second.data) <= JOINED_BYTES
 
 
 def run(

@@ -25,8 +25,8 @@ class Between(Source):
     def __init__(
         self, source: Source, *, from_: Instant | None = None, to: Instant | None = None, for_s: float | None = None
     ) -> None:
-        super().__init__(source.label)
         self.source = source
+        super().__init__(source.label)
         self.kind = source.kind
         self.baud, self.size = source.baud, source.size
         self._from, self._to, self._for_s = from_, to, for_s
@@ -34,6 +34,15 @@ class Between(Source):
         self._first: EpochStart | None = None
         self._passed: EpochStart | None = None
         self._over = False
+
+    @property
+    def state(self) -> str:
+        """That of the source itself."""
+        return self.source.state
+
+    @state.setter
+    def state(self, state: str) -> None:
+        """The source tells its own state."""
 
     def chunks(self) -> Iterator[Chunk]:
         tape = Tape()
@@ -55,7 +64,7 @@ class Between(Source):
                 held.clear()
                 if self._over and self.kind != "log":
                     return
-            if not self._over:
+            if not self._over and not self._closing:
                 held += self._starts.finish()
                 yield from self._cut(tape, held, tape.end)
         finally:
@@ -110,7 +119,8 @@ class Between(Source):
 
     def _mirror(self) -> None:
         self.kind = self.source.kind
-        self.sha256, self.consumed, self.state = self.source.sha256, self.source.consumed, self.source.state
+        self.sha256, self.consumed, self.doubts = self.source.sha256, self.source.consumed, self.source.doubts
+        self.baud = self.source.baud
 
     def _nothing_there(self) -> str:
         if self._first is None:

@@ -22,7 +22,7 @@ TIMED = re.compile(
 """A sentence with a time of day: checksummed text, time, checksum."""
 
 SAME_EPOCH_MS = 20
-"""Sentences of one epoch may differ by this much in time: some receivers round each sentence by itself."""
+"""Sentences of one epoch differ by less than this in time: some receivers round each sentence by itself."""
 
 LONGEST_LINE = 512
 """Bytes kept of an unfinished line: a sentence, a TAG block and a host stamp fit."""
@@ -100,9 +100,9 @@ class EpochStarts:
         if self._axis_ms is not None:
             step_ms = abs(axis_ms - self._axis_ms)
             tolerance_ms = min(SAME_EPOCH_MS, self._shortest_ms / 4)
-            if step_ms <= tolerance_ms:
+            if step_ms < tolerance_ms:
                 return False
-            if self._before_ms is not None and abs(axis_ms - self._before_ms) <= tolerance_ms:
+            if self._before_ms is not None and abs(axis_ms - self._before_ms) < tolerance_ms:
                 return False
             self._shortest_ms = min(self._shortest_ms, step_ms)
         self._before_ms, self._axis_ms = self._axis_ms, axis_ms

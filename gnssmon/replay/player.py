@@ -157,6 +157,9 @@ class Player(Source):
     def _played(self) -> Iterator[Chunk]:
         tape, starts, schedule = Tape(), EpochStarts(), _Schedule()
         for chunk in self._log.chunks():
+            if not chunk.data:
+                yield from self._silence(chunk, tape, schedule)
+                continue
             base = tape.end
             tape.push(chunk)
             marks = schedule.marks(chunk, base, starts.feed(chunk.data))
@@ -165,10 +168,22 @@ class Player(Source):
             if self._closing or self.rewound:
                 return
             yield from tape.take(starts.certain)
+        if self._closing or self.rewound:
+            return
         yield from self._paced(tape, [_Mark(s.offset, s.axis_ms / 1000.0, s.axis_ms) for s in starts.finish()])
         if not self.rewound:
             yield from tape.take(tape.end)
-        self.consumed, self.sha256 = self._log.consumed, self._log.sha256
+        self.consumed, self.sha256, self.doubts = self._log.consumed, self._log.sha256, self._log.doubts
+
+    def _silence(self, chunk: Chunk, tape: Tape, schedule: _Schedule) -> Iterator[Chunk]:
+        """Each moment of a recorded silence at its time."""
+        yield from tape.take(tape.end)
+        times = [chunk.received_s] if chunk.arrivals is None else chunk.arrivals.received_s.tolist()
+        for received_s in times:
+            yield from self._paced(tape, schedule.moment(received_s, tape.end))
+            if self._closing or self.rewound:
+                return
+            yield Chunk(b"", received_s)
 
     def _paced(self, tape: Tape, marks: list[_Mark]) -> Iterator[Chunk]:
         """Wait at each mark until it is due; what lies before it is handed on first."""
@@ -231,6 +246,12 @@ class _Schedule:
         marks += [_Mark(base + o, t, None) for o, t in zip(parts.offset.tolist(), times, strict=True)]
         marks.sort(key=lambda mark: (mark.offset, mark.axis_ms is None))
         return marks
+
+    def moment(self, received_s: float, offset: int) -> list[_Mark]:
+        """The mark of a silence; none before the first epoch, or where it has no time."""
+        if self._offset_s is None or math.isnan(received_s):
+            return []
+        return [_Mark(offset, received_s + self._offset_s, None)]
 
 
 def _offsets(starts: list[EpochStart], base: int) -> npt.NDArray[np.int64]:

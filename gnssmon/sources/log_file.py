@@ -78,7 +78,7 @@ def _zstd_unpacker() -> Unpacker:
 
 
 COMPRESSIONS: dict[bytes, tuple[str, Callable[[], Unpacker]]] = {
-    b"\x1f\x8b": ("gzip", _Gunzip),
+    b"\x1f\x8b\x08": ("gzip", _Gunzip),
     b"BZh": ("bzip2", bz2.BZ2Decompressor),
     b"\xfd7zXZ\x00": ("xz", lzma.LZMADecompressor),
     b"\x28\xb5\x2f\xfd": ("zstd", _zstd_unpacker),
@@ -93,8 +93,13 @@ class LogFile(Source):
 
     kind: Kind = "log"
 
-    def __init__(self, path: Path, *, label: str | None = None, block_bytes: int = BLOCK_BYTES) -> None:
-        """Open the file. Raises SourceError when it cannot be read."""
+    def __init__(
+        self, path: Path, *, label: str | None = None, block_bytes: int = BLOCK_BYTES, unpack: bool = True
+    ) -> None:
+        """Open the file; without ``unpack`` its bytes are what they are, whatever they look like.
+
+        Raises SourceError when it cannot be read.
+        """
         super().__init__(str(path) if label is None else label)
         self.path = path
         self._block_bytes = block_bytes
@@ -103,7 +108,8 @@ class LogFile(Source):
         self._hash = hashlib.sha256()
         start = self._file.read(8)
         self._file.seek(0)
-        self.compression = next((kind for magic, kind in COMPRESSIONS.items() if start.startswith(magic)), None)
+        kinds = [kind for magic, kind in COMPRESSIONS.items() if unpack and start.startswith(magic)]
+        self.compression = kinds[0] if kinds else None
         """Name and unpacker; None: the bytes are stored as they are."""
 
     def chunks(self) -> Iterator[Chunk]:

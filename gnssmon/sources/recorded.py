@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Iterator
+from itertools import pairwise
 from pathlib import Path
 
 import numpy as np
 
 from gnssmon.chunks import Arrivals, Chunk
 from gnssmon.errors import SourceError
-from gnssmon.recording.folder import RecordedFile, read_arrivals, read_folder, stored
+from gnssmon.recording.folder import PACKED, RecordedFile, read_arrivals, read_folder, stored
 from gnssmon.sources.log_file import LogFile
 from gnssmon.sources.source import Kind, Source
 
@@ -24,7 +25,7 @@ class Recording(Source):
         """Open a recording's folder, or one recorded file. Raises SourceError when there is nothing to read."""
         super().__init__(str(path) if label is None else label)
         self._folder = path if path.is_dir() else path.parent
-        self._files = read_folder(path) if path.is_dir() else (RecordedFile(name=path.name.removesuffix(".gz")),)
+        self._files = read_folder(path) if path.is_dir() else (RecordedFile(name=path.name.removesuffix(PACKED)),)
         if not self._files:
             raise SourceError(f"the folder '{path}' is no recording: it holds no .nmea file")
         self._open = self._opened(self._files[0])
@@ -45,7 +46,7 @@ class Recording(Source):
                     one.update(chunk.data)
                     whole.update(chunk.data)
                     self.consumed = finished + log.consumed
-                    yield _stamped(chunk, offset, arrivals)
+                    yield from _stamped(chunk.data, offset, arrivals)
                     offset += len(chunk.data)
                 if self._closing:
                     return
@@ -66,29 +67,41 @@ class Recording(Source):
         return stored(self._folder / file.name)
 
     def _opened(self, file: RecordedFile) -> LogFile:
-        return LogFile(self._place(file) or self._folder / file.name)
+        place = self._place(file) or self._folder / file.name
+        return LogFile(place, unpack=place.name.endswith(PACKED))
 
 
-def _stamped(chunk: Chunk, offset: int, arrivals: Arrivals | None) -> Chunk:
-    """Give the bytes that begin at ``offset`` of a file their times."""
-    if arrivals is None or not len(chunk.data):
-        return chunk
+def _stamped(data: bytes, offset: int, arrivals: Arrivals | None) -> Iterator[Chunk]:
+    """The bytes that begin at ``offset`` of a file with their times; silences noted among them in chunks of their own.
+
+    Silence between this block and the next is left to the next.
+    """
+    if arrivals is None:
+        yield Chunk(data)
+        return
     first = max(0, int(np.searchsorted(arrivals.offset, offset, side="right")) - 1)
-    if first and arrivals.offset[first - 1] == offset:
-        # Silence noted in front of this very byte: begin with the first of the rows.
+    if arrivals.offset[first] == offset:
         first = int(np.searchsorted(arrivals.offset, offset, side="left"))
-    last = int(np.searchsorted(arrivals.offset, offset + len(chunk.data), side="left"))
+    last = int(np.searchsorted(arrivals.offset, offset + len(data), side="left"))
     if last <= first:
-        return chunk
-    at = np.maximum(arrivals.offset[first:last] - offset, 0)
-    return Chunk(chunk.data, float(arrivals.received_s[last - 1]), Arrivals(at, arrivals.received_s[first:last]))
+        yield Chunk(data)  # The table begins later: of these bytes nothing is known.
+        return
+    begins = np.maximum(arrivals.offset[first:last] - offset, 0)
+    times = arrivals.received_s[first:last]
+    silent = np.append(begins[1:] == begins[:-1], False)
+    # Runs of rows of one kind, each a chunk.
+    edges = [0, *(np.flatnonzero(np.diff(silent)) + 1).tolist(), len(begins)]
+    for begin, end in pairwise(edges):
+        upto = len(data) if end == len(begins) else int(begins[end])
+        piece = data[begins[begin] : upto] if not silent[begin] else b""
+        at = begins[begin:end] - begins[begin]
+        yield Chunk(piece, float(times[end - 1]), Arrivals(at, times[begin:end]))
 
 
 def _left_over(size: int, arrivals: Arrivals | None) -> Iterator[Chunk]:
     """Rows at a file's end, without bytes: silence before the recording stopped."""
     if arrivals is None:
         return
-    first = int(np.searchsorted(arrivals.offset, size, side="left"))
-    late = arrivals.received_s[first:]
+    late = arrivals.received_s[int(np.searchsorted(arrivals.offset, size, side="left")) :]
     if len(late):
         yield Chunk(b"", float(late[-1]), Arrivals(np.zeros(len(late), dtype=np.int64), late))
