@@ -256,16 +256,7 @@ def _last(table: Table) -> Table:
     row = len(table) - 1
     if table.formatter == "GNS" and len(whole := np.flatnonzero(table.talker == WHOLE)):
         row = int(whole[-1])
-    one = slice(row, row + 1)
-    return Table(
-        table.formatter,
-        table.sequence[one],
-        table.talker[one],
-        table.size[one],
-        table.received_s[one],
-        table.stamped_s[one],
-        {name: column[one] for name, column in table.fields.items()},
-    )
+    return table.rows(slice(row, row + 1))
 
 
 def _text(field: bytes) -> str:

@@ -6,8 +6,10 @@ formatters survives their being decoded one formatter at a time.
 
 from __future__ import annotations
 
+from abc import abstractmethod
 from collections import Counter
-from dataclasses import dataclass, field
+from collections.abc import Mapping
+from dataclasses import dataclass, field, fields
 
 import numpy as np
 import numpy.typing as npt
@@ -41,7 +43,7 @@ class Sentences:
     """Accepted sentences of one block, in stream order. All arrays have shape (n,)."""
 
     buffer: npt.NDArray[np.uint8]
-    """The block's bytes; offsets below point into it."""
+    """The block's bytes and one line end more; offsets below point into it."""
     start: npt.NDArray[np.int64]
     """Offset of the address's first byte (behind ``$`` or ``!``)."""
     end: npt.NDArray[np.int64]
@@ -53,9 +55,36 @@ class Sentences:
     """Arrival of the chunk that completed the sentence, s since 1970 UTC; NaN unknown."""
     stamped_s: npt.NDArray[np.float64]
     """The host's own stamp on the line (TAG ``c:``, a date before, UNIX time behind the checksum); NaN none."""
+    address: npt.NDArray[np.uint64]
+    """The address's letters as a number, eight bits each, the last letter lowest."""
+    marks: npt.NDArray[np.int64]
+    """Offsets of every comma, ``*``, ``$``, ``!``, CR and LF in ``buffer``; shape (m,)."""
+    first_mark: npt.NDArray[np.int64]
+    """Index into ``marks`` of the one behind the address."""
+    last_mark: npt.NDArray[np.int64]
+    """Index into ``marks`` of the one behind the last field: that at ``end``."""
 
     def __len__(self) -> int:
         return len(self.start)
+
+    def rows(self, chosen: npt.NDArray[np.intp]) -> Sentences:
+        """Some of the sentences, of the same block."""
+        values = {
+            field.name: getattr(self, field.name) for field in fields(self) if field.name not in ("buffer", "marks")
+        }
+        part = {name: column[chosen] for name, column in values.items()}
+        return Sentences(buffer=self.buffer, marks=self.marks, **part)
+
+
+Chosen = slice | npt.NDArray[np.intp] | npt.NDArray[np.bool_]
+
+
+class LazyFields(Mapping[str, Column]):
+    """Columns that are read when they are first asked for: most questions need few of them."""
+
+    @abstractmethod
+    def rows(self, chosen: Chosen) -> LazyFields:
+        """The same of some rows only."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -75,10 +104,27 @@ class Table:
     size: npt.NDArray[np.int32]
     received_s: npt.NDArray[np.float64]
     stamped_s: npt.NDArray[np.float64]
-    fields: dict[str, Column]
+    fields: Mapping[str, Column]
 
     def __len__(self) -> int:
         return len(self.sequence)
+
+    def rows(self, chosen: Chosen) -> Table:
+        """Some of the rows."""
+        columns = self.fields
+        if isinstance(columns, LazyFields):
+            part: Mapping[str, Column] = columns.rows(chosen)
+        else:
+            part = {name: column[chosen] for name, column in columns.items()}
+        return Table(
+            self.formatter,
+            self.sequence[chosen],
+            self.talker[chosen],
+            self.size[chosen],
+            self.received_s[chosen],
+            self.stamped_s[chosen],
+            part,
+        )
 
 
 @dataclass(frozen=True, slots=True)

@@ -2,15 +2,16 @@
 
 Strategy. Only whole lines are looked at: what comes behind the last line end waits for more, so that the answer cannot
 depend on how the stream was cut. A line that never ends is broken by a rule of its own bytes (``_broken``), which keeps
-the wait bounded. Within the whole lines everything is found by position: the sorted offsets of ``$``, ``!``, ``*``, CR
-and LF; a start directly followed in that list by ``*`` is a sentence with a checksum, one followed by a line end is a
-sentence without. Checksums of all of them are taken at once. What stands before and behind a sentence on its line is
-looked at only where there is something (``prefixes``).
+the wait bounded. Within the whole lines everything is found by position: the sorted offsets of commas, ``$``, ``!``,
+``*``, CR and LF, the *marks*. A start whose next mark other than a comma is ``*`` is a sentence with a checksum, one
+followed by a line end is a sentence without; the fields lie between neighbouring marks. Checksums of all are taken at
+once. What stands before and behind a sentence on its line is looked at only where there is something (``prefixes``).
 """
 
 from __future__ import annotations
 
 from collections import Counter
+from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
@@ -33,18 +34,18 @@ LONGEST_LINE = 4096
 MOST_KINDS = 512
 """Different addresses that a tally keeps apart: noise with a lucky checksum must not fill the memory."""
 
-SHORTEST_ADDRESS, LONGEST_ADDRESS = 3, 8
+SHORTEST_ADDRESS, USUAL_ADDRESS, LONGEST_ADDRESS = 3, 5, 8
 """Letters and digits behind the start character, up to the first comma."""
 
-LF, CR, DOLLAR, BANG, STAR, COMMA, P, Q = (ord(c) for c in "\n\r$!*,PQ")
+USUAL_KINDS = 100
+"""Different addresses of an ordinary stream and more."""
+
+LF, CR, SPACE, BANG, DOLLAR, STAR, COMMA, DELETE = (ord(c) for c in "\n\r !$*,\x7f")
 
 _SPECIAL = np.zeros(256, dtype=bool)
 _SPECIAL[[LF, CR, DOLLAR, BANG, STAR]] = True
-_PRINTABLE = np.zeros(256, dtype=bool)
-_PRINTABLE[0x20:0x7F] = True
 _ADDRESS = np.zeros(256, dtype=bool)
 _ADDRESS[[*range(ord("0"), ord("9") + 1), *range(ord("A"), ord("Z") + 1)]] = True
-_KNOWN = frozenset(SENTENCES)
 
 OTHER = "other"
 """Stands for every address beyond MOST_KINDS."""
@@ -84,88 +85,171 @@ class Framer:
         assert len(tally.by_type) <= MOST_KINDS + 1
 
     def _frame(self, lines: Chunk) -> Sentences:
-        buffer = np.frombuffer(lines.data, dtype=np.uint8)
-        special = np.flatnonzero(_SPECIAL[buffer])
-        kind = buffer[special]
-        opens = np.flatnonzero((kind == DOLLAR) | (kind == BANG))
-        start = special[opens] + 1
-        # The next special byte behind each start; the end of the block serves as a line end.
-        following = np.append(special, len(buffer))[opens + 1]
-        closed_by = np.append(kind, np.uint8(LF))[opens + 1]
-        named, comma = _addressed(buffer, start, following)
-        start, following, closed_by, comma = start[named], following[named], closed_by[named], comma[named]
-
-        starred = closed_by == STAR
-        stated = np.full(len(start), -1, dtype=np.int16)
-        stated[starred] = hex_value(buffer, following[starred] + 1)
-        sound = (following - start < LONGEST_SENTENCE) & _printable(buffer, start, following)
+        # A line end of our own behind the block: a last line without one ends there all the same.
+        buffer = np.frombuffer(lines.data + b"\n", dtype=np.uint8)
+        found = _find(buffer)
+        starred = found.closed_by == STAR
+        stated = np.full(len(found.start), -1, dtype=np.int16)
+        stated[starred] = hex_value(buffer, found.end[starred] + 1)
+        sound = (found.end - found.start < LONGEST_SENTENCE) & found.printable
         complete = sound & starred & (stated >= 0)
         good = complete.copy()
-        good[complete] = xor_between(buffer, start[complete], following[complete]) == stated[complete]
+        good[complete] = xor_between(buffer, found.start[complete], found.end[complete]) == stated[complete]
         failed = complete & ~good
-        plain = sound & ((closed_by == CR) | (closed_by == LF))
-        plain &= self._may_be_plain(buffer, start, comma, good)
+        plain = sound & ((found.closed_by == CR) | (found.closed_by == LF))
+        plain &= self._may_be_plain(found, good)
 
-        self._count_failures(buffer, start[failed], comma[failed])
-        self.tally.malformed += int(len(start) - complete.sum() - plain.sum())
+        self._count_failures(found.address[failed])
+        self.tally.malformed += int(len(complete) - complete.sum() - plain.sum())
         accepted = np.flatnonzero(good | plain)
         unverified = plain[accepted]
-        end = following[accepted]
+        start, end = found.start[accepted], found.end[accepted]
         tail = np.where(unverified, end, end + 3)
-        size = (tail - start[accepted] + 3).astype(np.int32)  # the start character, and two for CR LF
-        bodies = Surroundings(start[accepted] - 1, tail)
-        stamped_s, around = read_surroundings(lines.data, bodies, buffer)
+        stamped_s, around = read_surroundings(lines.data, Surroundings(start - 1, tail), buffer[:-1])
         lost = failed | ~(complete | plain)
-        lost_bytes = int((following[lost] - start[lost] + 1 + 3 * failed[lost]).sum())
-        line_ends = int(((kind == CR) | (kind == LF)).sum())
-        inside = int((tail - start[accepted] + 1).sum())
-        self.tally.non_nmea_bytes += max(0, len(buffer) - inside - lost_bytes - line_ends - around)
-        return self._accept(lines, buffer, start[accepted], end, comma[accepted], size, stamped_s, unverified)
-
-    def _may_be_plain(
-        self, buffer: npt.NDArray[np.uint8], start: Offsets, comma: Offsets, good: npt.NDArray[np.bool_]
-    ) -> npt.NDArray[np.bool_]:
-        """Without a checksum: only known sentences, and only while the stream has shown no good checksum."""
-        count = len(start)
-        if self.tally.sentences > self.tally.unverified:
-            return np.zeros(count, dtype=bool)
-        first_good = int(good.argmax()) if good.any() else count
-        may = np.zeros(count, dtype=bool)
-        for i in range(first_good):
-            may[i] = bytes(buffer[comma[i] - 3 : comma[i]]).decode("latin-1") in _KNOWN and comma[i] - start[i] == 5
-        return may
-
-    def _count_failures(self, buffer: npt.NDArray[np.uint8], start: Offsets, comma: Offsets) -> None:
-        self.tally.checksum_failures += len(start)
-        for address, count in _addresses(buffer, start, comma).items():
-            _add(self.tally.failures_by_type, address, count)
-
-    def _accept(
-        self,
-        lines: Chunk,
-        buffer: npt.NDArray[np.uint8],
-        start: Offsets,
-        end: Offsets,
-        comma: Offsets,
-        size: npt.NDArray[np.int32],
-        stamped_s: npt.NDArray[np.float64],
-        unverified: npt.NDArray[np.bool_],
-    ) -> Sentences:
-        count = len(start)
-        tally = self.tally
-        tally.sentences += count
-        tally.unverified += int(unverified.sum())
-        for address, number in _addresses(buffer, start, comma).items():
-            proprietary = address.startswith("P") and not address.startswith("PQ")
-            _add(tally.by_type, address if proprietary else address[2:] or address, number)
-            _add(tally.talkers, "P" if proprietary else address[:2], number)
-        sequence = np.arange(self._sequence, self._sequence + count, dtype=np.int64)
-        self._sequence += count
+        lost_bytes = int((found.end[lost] - found.start[lost] + 1 + 3 * failed[lost]).sum())
+        inside = int((tail - start + 1).sum())
+        self.tally.non_nmea_bytes += max(0, len(lines.data) - inside - lost_bytes - found.line_ends - around)
+        self._count(found.address[accepted], int(unverified.sum()))
+        sequence = np.arange(self._sequence, self._sequence + len(accepted), dtype=np.int64)
+        self._sequence += len(accepted)
         if lines.arrivals is None:
-            received_s = np.full(count, lines.received_s)
+            received_s = np.full(len(accepted), lines.received_s)
         else:
             received_s = lines.arrivals.at(_line_end(buffer, end))
-        return Sentences(buffer, start, end, sequence, size, received_s, stamped_s)
+        return Sentences(
+            buffer=buffer,
+            start=start,
+            end=end,
+            sequence=sequence,
+            size=(tail - start + 3).astype(np.int32),  # the start character, and two for CR LF
+            received_s=received_s,
+            stamped_s=stamped_s,
+            address=found.address[accepted],
+            marks=found.marks,
+            first_mark=found.first_mark[accepted],
+            last_mark=found.last_mark[accepted],
+        )
+
+    def _may_be_plain(self, found: _Found, good: npt.NDArray[np.bool_]) -> npt.NDArray[np.bool_]:
+        """Without a checksum: only known sentences, and only while the stream has shown no good checksum."""
+        may = np.zeros(len(good), dtype=bool)
+        if self.tally.sentences > self.tally.unverified:
+            return may
+        first_good = int(good.argmax()) if good.any() else len(good)
+        for i in range(first_good):
+            address = _text(int(found.address[i]))
+            may[i] = len(address) == 5 and address[2:] in SENTENCES
+        return may
+
+    def _count_failures(self, address: npt.NDArray[np.uint64]) -> None:
+        self.tally.checksum_failures += len(address)
+        for text, count in _counted(address):
+            _add(self.tally.failures_by_type, text, count)
+
+    def _count(self, address: npt.NDArray[np.uint64], unverified: int) -> None:
+        tally = self.tally
+        tally.sentences += len(address)
+        tally.unverified += unverified
+        for text, count in _counted(address):
+            proprietary = text.startswith("P") and not text.startswith("PQ")
+            _add(tally.by_type, text if proprietary else text[2:] or text, count)
+            _add(tally.talkers, "P" if proprietary else text[:2], count)
+
+
+@dataclass(frozen=True, slots=True)
+class _Found:
+    """Everything in a block that begins like a sentence: a start character with an address behind it.
+
+    Arrays of shape (n,) but for ``marks``.
+    """
+
+    start: Offsets
+    end: Offsets
+    closed_by: npt.NDArray[np.uint8]
+    """What stands at ``end``."""
+    address: npt.NDArray[np.uint64]
+    printable: npt.NDArray[np.bool_]
+    """Nothing but printable characters inside."""
+    marks: Offsets
+    first_mark: Offsets
+    last_mark: Offsets
+    line_ends: int
+    """CR and LF in the block."""
+
+
+def _find(buffer: npt.NDArray[np.uint8]) -> _Found:
+    """Index the block's marks and pair each start character with the mark, other than a comma, that follows it.
+
+    The block ends with a line end of our own, which is not counted.
+    """
+    # Every mark is at most 0x2C, and little else in a sentence is: one comparison finds them all.
+    marks = np.flatnonzero(buffer <= COMMA)
+    kind = buffer[marks]
+    others = np.flatnonzero(kind != COMMA)
+    strays = ~_SPECIAL[kind[others]]
+    bad = np.flatnonzero(buffer >= DELETE) if buffer.max() >= DELETE else np.empty(0, dtype=np.int64)
+    if strays.any():
+        stray = marks[others[strays]]
+        control = stray[buffer[stray] < SPACE]
+        bad = np.sort(np.concatenate([bad, control]))
+        keep = np.ones(len(marks), dtype=bool)
+        keep[others[strays]] = False
+        marks, kind = marks[keep], kind[keep]
+        others = np.flatnonzero(kind != COMMA)
+    other_kind = kind[others]
+    opens = np.flatnonzero((other_kind == DOLLAR) | (other_kind == BANG))
+    line_ends = int(np.count_nonzero(other_kind == LF) + np.count_nonzero(other_kind == CR)) - 1
+    first_mark, last_mark = others[opens] + 1, others[opens + 1]
+    start, end = marks[others[opens]] + 1, marks[last_mark]
+    proper, address = _addresses(buffer, start, marks[first_mark] - start)
+    if not proper.all():
+        start, end, address = start[proper], end[proper], address[proper]
+        first_mark, last_mark, opens = first_mark[proper], last_mark[proper], opens[proper]
+    printable: npt.NDArray[np.bool_] = np.ones(len(start), dtype=bool)
+    if len(bad):
+        printable = np.searchsorted(bad, start) == np.searchsorted(bad, end)
+    closed_by = other_kind[opens + 1]
+    return _Found(start, end, closed_by, address, printable, marks, first_mark, last_mark, line_ends)
+
+
+def _addresses(
+    buffer: npt.NDArray[np.uint8], start: Offsets, length: Offsets
+) -> tuple[npt.NDArray[np.bool_], npt.NDArray[np.uint64]]:
+    """Which starts have a proper address of ``length`` behind them, and the address as a number."""
+    proper = (length >= SHORTEST_ADDRESS) & (length <= LONGEST_ADDRESS)
+    address = np.zeros(len(start), dtype=np.uint64)
+    usual = bool((length == USUAL_ADDRESS).all())
+    for i in range(USUAL_ADDRESS if usual else LONGEST_ADDRESS):
+        if usual:
+            byte = buffer[start + i]
+            proper &= _ADDRESS[byte]
+            address = (address << np.uint64(8)) | byte
+        else:
+            inside = i < length
+            byte = buffer[np.where(inside, start + i, 0)] if len(buffer) else np.empty(0, dtype=np.uint8)
+            proper &= _ADDRESS[byte] | ~inside
+            address = np.where(inside, (address << np.uint64(8)) | byte, address)
+    return proper, address
+
+
+def _counted(address: npt.NDArray[np.uint64]) -> list[tuple[str, int]]:
+    """How often each address stands there."""
+    counts: list[tuple[int, int]] = []
+    rest = address
+    # Few different ones come often: taking them out one by one is quicker than sorting. Many different ones are noise.
+    while len(rest) and len(counts) < USUAL_KINDS:
+        same = rest == rest[0]
+        counts.append((int(rest[0]), int(np.count_nonzero(same))))
+        rest = rest[~same]
+    if len(rest):
+        values, numbers = np.unique(rest, return_counts=True)
+        counts += list(zip(values.tolist(), numbers.tolist(), strict=True))
+    return [(_text(value), number) for value, number in counts]
+
+
+def _text(address: int) -> str:
+    return address.to_bytes(8, "big").lstrip(b"\0").decode("ascii")
 
 
 def _end_of_last_line(data: bytes) -> int:
@@ -189,44 +273,6 @@ def _line_end(buffer: npt.NDArray[np.uint8], end: Offsets) -> Offsets:
     ends = np.flatnonzero((buffer == LF) | (buffer == CR))
     at = np.searchsorted(ends, end)
     return np.append(ends, len(buffer) - 1)[at]
-
-
-def _addressed(
-    buffer: npt.NDArray[np.uint8], start: Offsets, following: Offsets
-) -> tuple[npt.NDArray[np.bool_], Offsets]:
-    """Which starts have a proper address behind them, and the offset where each address ends."""
-    count = len(buffer)
-    end = np.full(len(start), -1, dtype=np.int64)
-    running = np.ones(len(start), dtype=bool)
-    for length in range(LONGEST_ADDRESS + 1):
-        at = start + length
-        over = at >= following
-        byte = buffer[np.minimum(at, count - 1)] if count else np.zeros(len(start), dtype=np.uint8)
-        stops = running & (over | (byte == COMMA))
-        end[stops] = at[stops]
-        running &= ~stops & _ADDRESS[byte]
-    return end - start >= SHORTEST_ADDRESS, np.minimum(end, following)
-
-
-def _printable(buffer: npt.NDArray[np.uint8], start: Offsets, end: Offsets) -> npt.NDArray[np.bool_]:
-    bad = np.flatnonzero(~_PRINTABLE[buffer])
-    clean: npt.NDArray[np.bool_] = np.searchsorted(bad, start) == np.searchsorted(bad, end)
-    return clean
-
-
-def _addresses(buffer: npt.NDArray[np.uint8], start: Offsets, comma: Offsets) -> Counter[str]:
-    """How often each address stands there."""
-    if not len(start):
-        return Counter()
-    packed = np.zeros(len(start), dtype=np.uint64)
-    for i in range(LONGEST_ADDRESS):
-        at = start + i
-        byte = np.where(at < comma, buffer[np.minimum(at, len(buffer) - 1)], 0).astype(np.uint64)
-        packed = (packed << np.uint64(8)) | byte
-    value, count = np.unique(packed, return_counts=True)
-    return Counter(
-        {int(v).to_bytes(8, "big").rstrip(b"\0").decode("ascii"): int(n) for v, n in zip(value, count, strict=True)}
-    )
 
 
 def _add(counter: Counter[str], key: str, count: int) -> None:

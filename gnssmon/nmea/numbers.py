@@ -20,6 +20,9 @@ Floats = npt.NDArray[np.float64]
 MOST_DIGITS = 18
 """More do not fit into 63 bits; 15 are exact."""
 
+EXACT_DIGITS = 15
+"""So many are exact in double precision."""
+
 LONGEST_NUMBER = 24
 LONGEST_TEXT = 64
 """Characters kept of a field: texts are 61 at most by the standard."""
@@ -29,6 +32,8 @@ DAY_MS = 86_400_000
 _TEN = np.array([10**i for i in range(MOST_DIGITS + 1)], dtype=np.int64)
 _TEN_FLOAT = np.array([10.0**i for i in range(LONGEST_NUMBER + 1)])
 _ZERO, _NINE, _POINT, _PLUS, _MINUS = (ord(c) for c in "09.+-")
+_POINT_DIGIT = (_POINT - _ZERO) % 256
+"""A point, read as if it were a digit."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -63,11 +68,58 @@ def characters(buffer: Bytes, start: Offsets, end: Offsets, longest: int) -> Byt
 
 def digits(buffer: Bytes, start: Offsets, end: Offsets) -> Digits:
     """Read each field as a decimal number."""
-    text = characters(buffer, start, end, LONGEST_NUMBER)
-    count, width = text.shape
+    length = end - start
+    width = int(length.max(initial=0))
     if not width:
-        nothing = np.zeros(count, dtype=np.int64)
-        return Digits(nothing, nothing, nothing, np.zeros(count, dtype=bool), np.zeros(count, dtype=bool))
+        nothing = np.zeros(len(start), dtype=np.int64)
+        return Digits(nothing, nothing, nothing, np.zeros(len(start), dtype=bool), np.zeros(len(start), dtype=bool))
+    usual = _aligned_digits(buffer, start, end) if width <= EXACT_DIGITS else None
+    return usual or _any_digits(buffer, start, end)
+
+
+def _aligned_digits(buffer: Bytes, start: Offsets, end: Offsets) -> Digits | None:
+    """The same for a column whose numbers have all the same number of decimals, as a receiver's have; else None.
+
+    Right-aligned, their points stand in one column of the matrix and all digits have their weight by column.
+    """
+    length = end - start
+    width = int(length.max())
+    signed = np.zeros(len(start), dtype=bool)
+    head = buffer[np.minimum(start, len(buffer) - 1)]
+    negative = (head == _MINUS) & (length > 0)
+    signed = negative | ((head == _PLUS) & (length > 0))
+    first = start + signed
+    at = end[:, None] + np.arange(-width, 0)
+    text = buffer[np.maximum(at, 0)] - np.uint8(_ZERO)
+    if signed.any() or int(length.min()) < width:
+        text[at < first[:, None]] = 0
+    other = text > 9
+    count = other.sum(axis=0)
+    places = np.flatnonzero(count)
+    decimals = 0
+    if len(places) > 1:
+        return None
+    filled = end > first
+    if len(places):
+        column = int(places[0])
+        if count[column] != filled.sum() or (text[other[:, column], column] != _POINT_DIGIT).any():
+            return None
+        decimals = width - 1 - column
+        text[:, column] = 0
+        weight = _TEN_FLOAT[np.arange(width - 1, -1, -1)].copy()
+        weight[:column] /= 10.0
+    else:
+        weight = _TEN_FLOAT[np.arange(width - 1, -1, -1)]
+    mantissa = (text.astype(np.float64) @ weight).astype(np.int64)
+    point = 1 if len(places) else 0
+    whole = length - signed - decimals - point
+    valid = filled & (whole + decimals > 0)
+    return Digits(mantissa, np.full(len(start), decimals), whole, negative, valid)
+
+
+def _any_digits(buffer: Bytes, start: Offsets, end: Offsets) -> Digits:
+    """Read fields of any make-up."""
+    text = characters(buffer, start, end, LONGEST_NUMBER)
     digit = (text >= _ZERO) & (text <= _NINE)
     point = text == _POINT
     signed = (text[:, 0] == _MINUS) | (text[:, 0] == _PLUS)

@@ -130,10 +130,10 @@ def find(name: str) -> Instant | None:
     return None
 
 
-_FUNCTIONS: dict[Combine, Callable[[Floats], np.floating]] = {
-    Combine.LARGEST: np.max,
-    Combine.SMALLEST: np.min,
-    Combine.MEDIAN: np.median,
+_FUNCTIONS: dict[Combine, Callable[..., Floats]] = {
+    Combine.LARGEST: np.nanmax,
+    Combine.SMALLEST: np.nanmin,
+    Combine.MEDIAN: np.nanmedian,
 }
 
 SHORTEST_STEP_MS = 10
@@ -201,11 +201,15 @@ class Sliding:
             np.divide(total, weight, out=ratio, where=weight > 0)
             return ratio
         function = _FUNCTIONS[self._instant.combine]
+        known = np.where(self._bottom > 0, self._top, np.nan)
         values = np.full(len(low), np.nan)
-        for i, (first, last) in enumerate(zip(low, high, strict=True)):
-            known = self._top[first:last][self._bottom[first:last] > 0]
-            if len(known):
-                values[i] = function(known)
+        length = high - low
+        # Windows of a steady stream hold equally many epochs: those of one length are a matrix.
+        for one in np.unique(length[length > 0]).tolist():
+            rows = np.flatnonzero(length == one)
+            window = known[low[rows][:, None] + np.arange(one)]
+            some = np.isfinite(window).any(axis=1)
+            values[rows[some]] = function(window[some], axis=1)
         return values
 
     def _against_window(self, total: Floats, high: npt.NDArray[np.intp]) -> Floats:
