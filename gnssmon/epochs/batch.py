@@ -37,7 +37,7 @@ class UsedRows:
     satellite: npt.NDArray[np.int32]
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class EpochBatch:
     """Epochs in stream order; arrays of shape (n,) unless said. NaN or -1: not stated."""
 

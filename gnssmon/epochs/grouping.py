@@ -86,6 +86,8 @@ class Grouping:
             self._opened = sequence
         timed = np.flatnonzero(time_ms >= 0)
         time, clock = time_ms[timed], from_clock[timed]
+        if (regular := self._regular(sequence, len(time_ms), timed, time, clock)) is not None:
+            return regular
         changes = np.ones(len(timed), dtype=bool)
         changes[1:] = (time[1:] != time[:-1]) | (clock[1:] != clock[:-1])
         first = np.flatnonzero(changes)
@@ -120,6 +122,36 @@ class Grouping:
             for start, stop, number in late:
                 own[timed[start:stop]] = number
         return Grouped(own, current)
+
+    def _regular(
+        self, sequence: int, count: int, timed: Ints, time: Ints, clock: npt.NDArray[np.bool_]
+    ) -> Grouped | None:
+        """The same for a block in which nothing has to be remembered, as nearly all blocks of a log are; else None.
+
+        Every new time is later than the last one by at least a tolerance and no ZDA brings one: then each opens an
+        epoch, none is late, and no epoch is long enough to be cut.
+        """
+        if self._open is None or self._open.from_clock or not len(timed):
+            return None
+        step_ms = np.diff(time, prepend=self._open.time_ms)
+        opens = np.flatnonzero(step_ms)
+        if not len(opens) or clock[opens].any() or int(step_ms[opens].min()) < TOLERANCE_MS:
+            return None
+        place = timed[opens] + sequence
+        if int(np.diff(place, prepend=self._opened, append=sequence + count).max()) >= MOST_SENTENCES:
+            return None
+        before_ms = int(time[opens[-2]]) if len(opens) > 1 else self._open.time_ms
+        # The period's tolerances only ever shrink with it, and every step is beyond the widest of them.
+        shortest_ms = int(step_ms[opens].min())
+        self._before, self._open = _Mark(before_ms, False), _Mark(before_ms + shortest_ms, False)
+        self._learn_period()
+        self._open = _Mark(int(time[opens[-1]]), False)
+        step = np.zeros(count, dtype=np.int64)
+        step[timed[opens]] = 1
+        current = self.number + np.cumsum(step)
+        self.number += len(opens)
+        self._opened = int(place[-1])
+        return Grouped(current, current)
 
     def close(self) -> None:
         """Close all epochs; whatever comes next begins a new one."""

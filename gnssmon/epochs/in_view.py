@@ -82,8 +82,9 @@ class InView:
 
     def _take(self, table: Table, columns: Columns, begin: int, times: list[int]) -> None:
         listed = _listed(table, columns, begin)
-        talkers, signals = table.talker[begin:].tolist(), table.fields["signal_id"][begin:].tolist()
-        numbers, totals = table.fields["number"][begin:].tolist(), table.fields["total"][begin:].tolist()
+        tail = table.rows(slice(begin, None))
+        talkers, signals = tail.talker.tolist(), tail.fields["signal_id"].tolist()
+        numbers, totals = tail.fields["number"].tolist(), tail.fields["total"].tolist()
         for row, (talker, signal, number, total) in enumerate(zip(talkers, signals, numbers, totals, strict=True)):
             key = (talker, signal)
             came, groups = self._parts.pop(key, (0, []))
@@ -110,10 +111,12 @@ def _listed(table: Table, columns: Columns, begin: int) -> list[list[Group]]:
     """The groups of each GSV sentence from row ``begin`` on; those without a satellite number are left out."""
     listed: list[list[Group]] = [[] for _ in range(begin, len(table))]
     rows = columns.satellites
-    chosen = np.flatnonzero((rows.sentence >= begin) & (rows.number >= 0))
+    start = int(np.searchsorted(rows.sentence, begin))
+    chosen = np.flatnonzero(rows.number[start:] >= 0) + start
     sentence = rows.sentence[chosen]
-    satellite = satellite_codes(named_system(table.talker)[sentence], rows.number[chosen])
-    signal = signal_rows(satellite, table.fields["signal_id"].astype(np.uint8)[sentence])
+    tail = table.rows(slice(begin, None))
+    satellite = satellite_codes(named_system(tail.talker)[sentence - begin], rows.number[chosen])
+    signal = signal_rows(satellite, tail.fields["signal_id"].astype(np.uint8)[sentence - begin])
     values = (satellite, signal, rows.elevation_deg[chosen], rows.azimuth_deg[chosen], rows.cn0_dbhz[chosen])
     for row, group in zip((sentence - begin).tolist(), zip(*(v.tolist() for v in values), strict=True), strict=True):
         listed[row].append(Group(*group))

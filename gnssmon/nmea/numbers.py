@@ -144,12 +144,17 @@ def small_numbers(buffer: Bytes, start: Offsets, end: Offsets) -> npt.NDArray[np
     """The same for columns that nearly always hold one to three digits: satellite numbers, angles, levels."""
     length = end - start
     units = buffer[end - 1] - np.uint8(_ZERO)
-    tens = np.where(length > 1, buffer[end - 2] - np.uint8(_ZERO), np.uint8(0))
-    hundreds = np.where(length > 2, buffer[end - 3] - np.uint8(_ZERO), np.uint8(0))
-    value = units.astype(np.float32)
-    value += np.float32(10) * tens
-    value += np.float32(100) * hundreds
-    usual = (length > 0) & (length <= 3) & (units <= 9) & (tens <= 9) & (hundreds <= 9)
+    tens = buffer[end - 2] - np.uint8(_ZERO)
+    tens[length < 2] = 0
+    value = units + np.uint8(10) * tens.astype(np.float32)
+    usual = (length > 0) & (length <= 3) & (units <= 9) & (tens <= 9)
+    if int(length.max(initial=0)) > 2:
+        hundreds = buffer[end - 3] - np.uint8(_ZERO)
+        hundreds[length < 3] = 0
+        value += np.float32(100) * hundreds
+        usual &= hundreds <= 9
+    if usual.all():
+        return value
     value[~usual] = np.nan
     odd = np.flatnonzero(~usual & (length > 0))
     if len(odd):

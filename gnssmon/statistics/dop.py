@@ -11,7 +11,7 @@ from gnssmon.epochs.batch import EpochBatch
 from gnssmon.estimators.series import Series
 from gnssmon.geodesy.dop import dilution
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity, exact
-from gnssmon.statistics.grid import CODES, grid_of
+from gnssmon.statistics.grid import CODES, grid_of_chosen
 from gnssmon.statistics.subject import EVERYTHING, Site, Span
 
 MOST_ROWS = 1_500_000
@@ -129,7 +129,7 @@ class Dop:
             self._add(batch, chosen)
 
     def _add(self, batch: EpochBatch, chosen: npt.NDArray[np.bool_]) -> None:
-        grid = grid_of(batch, chosen)
+        grid = grid_of_chosen(batch, chosen)
         place = np.cumsum(chosen) - 1
         column = np.full(CODES, -1)
         column[grid.satellite] = np.arange(len(grid.satellite))

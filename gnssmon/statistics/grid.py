@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 from dataclasses import dataclass
 
 import numpy as np
@@ -58,8 +59,18 @@ class Grid:
         return np.isfinite(self.cn0_dbhz)
 
 
-def grid_of(batch: EpochBatch, chosen: npt.NDArray[np.bool_] | None = None) -> Grid:
-    """The batch's satellites; with ``chosen``, shape (n,), only those epochs, in order."""
+@functools.lru_cache(maxsize=1)
+def grid_of(batch: EpochBatch) -> Grid:
+    """The satellites of all epochs; the last batch's are kept, because several subjects ask for them in turn."""
+    return _grid(batch, None)
+
+
+def grid_of_chosen(batch: EpochBatch, chosen: npt.NDArray[np.bool_]) -> Grid:
+    """The satellites of the chosen epochs (shape (n,)), in order."""
+    return _grid(batch, chosen)
+
+
+def _grid(batch: EpochBatch, chosen: npt.NDArray[np.bool_] | None) -> Grid:
     rows = batch.signals
     epoch, satellite, signal = rows.epoch, rows.satellite, rows.signal
     cn0_dbhz, elevation_deg, azimuth_deg = rows.cn0_dbhz, rows.elevation_deg, rows.azimuth_deg
@@ -85,9 +96,10 @@ def grid_of(batch: EpochBatch, chosen: npt.NDArray[np.bool_] | None = None) -> G
     azimuth[epoch[stated], column[stated]] = azimuth_deg[stated]
     best = np.full(shape, np.nan, dtype=np.float32)
     heard = np.isfinite(cn0_dbhz)
-    for one in np.unique(signal[heard]) if heard.any() else ():
+    heard_signal = np.where(heard, signal + 1, -1)
+    for one in np.flatnonzero(np.bincount(heard_signal + 1)[1:]).tolist():
         # A signal lists a satellite once an epoch, so that no two rows meet in one cell.
-        which = np.flatnonzero(heard & (signal == one))
+        which = np.flatnonzero(heard_signal == one)
         at = epoch[which], column[which]
         best[at] = np.fmax(best[at], cn0_dbhz[which])
     return Grid(codes, listed, best, elevation, azimuth)

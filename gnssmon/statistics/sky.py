@@ -17,7 +17,7 @@ from gnssmon.epochs.batch import EpochBatch
 from gnssmon.estimators.rows import Rows
 from gnssmon.geodesy import directions
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity, exact
-from gnssmon.statistics.grid import CODES, grid_of
+from gnssmon.statistics.grid import CODES, grid_of_chosen
 from gnssmon.statistics.pictures import (
     CELL_BLOCKED,
     CELL_MIXED,
@@ -124,7 +124,7 @@ class Sky:
         chosen[able[first]] = True
         if not chosen.any():
             return
-        grid = grid_of(batch, chosen)
+        grid = grid_of_chosen(batch, chosen)
         epoch, column = np.nonzero(np.isfinite(grid.elevation_deg))
         self._open.append(
             (
