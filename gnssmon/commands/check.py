@@ -26,6 +26,9 @@ from gnssmon.sources.source import Source
 SHOWN_S = 1.0
 """Between two lines of progress."""
 
+GIVE_UP_S = 30.0
+"""A lost source that has not come back after so long ends a run without ``--for``: a receiver restarts in less."""
+
 STANDARD_OUTPUT = "-"
 
 
@@ -92,7 +95,8 @@ class _Run:
     ) -> None:
         self._clock = SystemClock()
         self._for_s: float | None = span["for_s"]
-        opened = hold_source(label, clock=self._clock)
+        # With a duration the run ends by it; without, a source that stays away ends it.
+        opened = hold_source(label, clock=self._clock, give_up_s=None if self._for_s else GIVE_UP_S)
         self._source: Source = opened
         if any(value is not None for value in span.values()):
             from gnssmon.replay.between import Between
@@ -138,6 +142,9 @@ class _Run:
                     close()
             if self._shown_s > 0.0 and sys.stderr.isatty():
                 click.echo(err=True)
+            for told in (*(getattr(watcher, "problem", "") for watcher in self._watchers), *self._source.doubts):
+                if told:
+                    click.echo(f"gnssmon: {printable(told)}", err=True)
 
     def snapshot(self) -> Snapshot:
         """The result, by the confidences that the looks taken have left."""
