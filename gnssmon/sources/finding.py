@@ -44,8 +44,6 @@ BURST_S, BURST_BYTES = 0.3, 512
 
 POLL_S = 0.02
 
-MOST_READ = 65536
-
 Searching = Generator[None, None, "Found"]
 
 
@@ -174,12 +172,16 @@ class SerialWire:
             raise SourceError(f"'{self.device}' does not take {baud} baud: {error}") from error
 
     def read(self) -> bytes:
-        from gnssmon.sources.serial_port import lost_because
+        from gnssmon.sources.serial_port import lost_because, take_waiting
 
+        data = bytearray()
         try:
-            return bytes(self.line.read(MOST_READ))
+            take_waiting(self.line, data)
         except (OSError, TypeError) as error:
+            if data:
+                return bytes(data)
             raise SourceError(f"'{self.device}' is lost: {lost_because(error)}") from error
+        return bytes(data)
 
     def close(self) -> None:
         with contextlib.suppress(OSError):

@@ -73,20 +73,20 @@ class SerialPort(LiveSource):
                 raise SourceError(f"'{self.label}' sends nothing readable any more; its rate may have changed")
 
     def _receive(self, wait_s: float) -> bytes | None:
-        data = b""
+        data = bytearray()
         try:
             if self._descriptor is not None and not select.select([self._descriptor], [], [], wait_s)[0]:
                 return b""
             until = self._clock.steady() + MOST_GATHER_S
             while True:
                 self._clock.sleep(GATHER_S)
-                data += bytes(self._line.read(MOST_BYTES))
+                take_waiting(self._line, data)
                 if not data or b"\n" in data or len(data) >= MOST_BYTES or self._clock.steady() >= until:
-                    return data
+                    return bytes(data)
         except (OSError, ValueError, TypeError) as error:
             # pyserial's SerialException is an OSError; a port closed by another thread gives the other two.
             if data:
-                return data  # The next call meets the same error.
+                return bytes(data)  # The next call meets the same error.
             if self._closing:
                 return None
             raise SourceError(f"'{self.label}' is lost: {lost_because(error)}") from error
@@ -94,6 +94,13 @@ class SerialPort(LiveSource):
     def _release(self) -> None:
         with contextlib.suppress(OSError):  # An unplugged device cannot even be closed properly.
             self._line.close()
+
+
+def take_waiting(line: serial.Serial, data: bytearray) -> None:
+    """Append what waits on an open line to ``data``, also when it then turns out to be lost (OSError)."""
+    # One read may give a single byte (rfc2217://) or a part of what waits: ask until there is nothing.
+    while len(data) < MOST_BYTES and (piece := line.read(MOST_BYTES)):
+        data += piece
 
 
 def opened(port: str, baud: int | None, framing: Framing = "8N1") -> serial.Serial:
