@@ -149,7 +149,7 @@ def test_reasons_name_the_remedy() -> None:
     assert lost_because(OSError(5, "Input/output error")).startswith("the device is gone")
 
 
-@pytest.mark.filterwarnings("ignore:setDaemon:DeprecationWarning")  # pyserial 3.5 itself
+@pytest.mark.filterwarnings("ignore:set(Daemon|Name):DeprecationWarning")  # pyserial 3.5 itself
 def test_a_port_behind_the_network_is_read_at_full_rate() -> None:
     """RFC 2217 (served by pyserial's own server side): a kilobyte comes in a few pieces, not byte by byte, and
     nothing but the protocol's own options is ever sent to the far port."""
