@@ -11,7 +11,7 @@ from gnssmon.printable import printable
 from gnssmon.report import words
 
 WIDTH = 80
-NAME_WIDTH = 29
+RESULT_WIDTH, NAME_WIDTH = 10, 31
 MOST_FINDINGS = 8
 PLAIN = str.maketrans({"≤": "<=", "≥": ">=", "±": "+-", "–": "-", "°": " deg"})
 """Some terminals and pipes cannot carry more than ASCII."""
@@ -46,19 +46,20 @@ def _verdict(result: Mapping[str, Any]) -> list[str]:
 
 
 def _criteria(result: Mapping[str, Any]) -> list[str]:
-    out = [f"{'criterion':{NAME_WIDTH}}{'value':>9}  {'interval':18} {'limit':12} result"]
+    out = [f"{'':{RESULT_WIDTH}}{'criterion':{NAME_WIDTH}}{'value':>9}  {'interval':16} limit"]
     for criterion in result["criteria"]:
         name, unit = criterion["quantity"], criterion["unit"]
         out.append(
+            f"{MARKS[criterion['result']]:{RESULT_WIDTH}}"
             f"{printable(name, NAME_WIDTH - 1):{NAME_WIDTH}}"
             f"{words.number(criterion['value'], unit, name).translate(PLAIN):>9}  "
-            f"{words.interval(criterion['interval'], unit, name):18} "
-            f"{words.limit(criterion).translate(PLAIN):12} {MARKS[criterion['result']]}".rstrip()[:WIDTH]
+            f"{words.interval(criterion['interval'], unit, name):16} "
+            f"{words.limit(criterion).translate(PLAIN)}"[:WIDTH].rstrip()
         )
         if criterion["result"] == "undecided":
             needed = criterion["needed_s"]
             more = f"; about {in_words(needed)} more" if needed is not None else ""
-            out += _wrapped(f"{criterion['reason']}{more}", "    ")
+            out += _wrapped(f"{criterion['reason']}{more}", " " * RESULT_WIDTH)
     if not result["criteria"]:
         out.append("(no criterion was given: nothing can be accepted)")
     return out
