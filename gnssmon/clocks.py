@@ -94,7 +94,7 @@ class ManualClock:
         self._start_s = now_s
         self._steady = 0.0
         self._step_s = 0.0
-        self._planned: list[tuple[float, int, Callable[[], None]]] = []
+        self._planned: list[tuple[float, int, Callable[[], object]]] = []
         self._order = count()
 
     def now(self) -> float:
@@ -111,7 +111,7 @@ class ManualClock:
             action()
         self._steady = until
 
-    def at(self, steady_s: float, action: Callable[[], None]) -> None:
+    def at(self, steady_s: float, action: Callable[[], object]) -> None:
         """Plan ``action`` for the steady time ``steady_s``."""
         heapq.heappush(self._planned, (steady_s, next(self._order), action))
 

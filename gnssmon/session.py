@@ -47,6 +47,10 @@ DEAF_S = 2.5
 """A live reader that has given nothing for so long, not even silence, hangs in the operating system (a name being
 looked up, a driver): the session tells the monitor of the silence in its place."""
 
+LETTING_GO_S = 1.0
+"""A reader that does not end so soon after its source was closed hangs in the operating system, or searches a rate:
+nobody waits for it, and it ends with the program."""
+
 PATIENCE_S = 0.25
 """How often a waiting thread looks whether it should stop."""
 
@@ -262,8 +266,11 @@ class _Threads:
         self.last.abandon()
         if len(self._lines) == 1:
             self._lines[0].abandon()
-        for thread in self._running:
-            thread.join()
+        reader, *keepers = self._running
+        reader.join(LETTING_GO_S)
+        self._lines[0].end()
+        for keeper in keepers:
+            keeper.join()
 
     def reraise(self) -> None:
         """Raise what went wrong in a thread of ours, a fault of the program."""

@@ -266,6 +266,27 @@ def test_a_deaf_reader_is_told_as_silence(monkeypatch: pytest.MonkeyPatch) -> No
     assert abs(monitor.fed[-1].received_s - time.time()) < 2.0
 
 
+def test_a_reader_that_hangs_does_not_hold_up_the_end() -> None:
+    """A source that does not notice its closing is left behind; the watchers have had all that it gave."""
+
+    class Hanging(Given):
+        def chunks(self) -> Iterator[Chunk]:
+            yield from BLOCKS
+            released.wait(10.0)
+
+    released, stop, kept = threading.Event(), threading.Event(), []
+    monitor = Noting(lambda chunk: stop.set() if chunk.data.endswith(b"T") else None)
+    began = time.monotonic()
+
+    outcome = run(Hanging([], kind="live"), monitor, [kept.append], CLOCK, stop=stop)
+    took_s = time.monotonic() - began
+    released.set()
+
+    assert outcome == Outcome("stopped")
+    assert took_s < 3.0
+    assert b"".join(chunk.data for chunk in kept) == monitor.data == b"".join(chunk.data for chunk in BLOCKS)
+
+
 def test_signals_set_the_flag_once() -> None:
     """SIGINT and SIGTERM set the flag; a second SIGINT interrupts as usual; afterwards everything is as it was."""
     before = signal.getsignal(signal.SIGINT), signal.getsignal(signal.SIGHUP)

@@ -103,7 +103,7 @@ class LogFile(Source):
         super().__init__(str(path) if label is None else label)
         self.path = path
         self._block_bytes = block_bytes
-        self._file = _opened(path)
+        self._file = opened(path)
         self.size = path.stat().st_size
         self._hash = hashlib.sha256()
         start = self._file.read(8)
@@ -199,7 +199,8 @@ class LogFile(Source):
             raise SourceError(f"'{self.path}' is cut off: its {name} data ends early, behind byte {unpacked} unpacked")
 
 
-def _opened(path: Path) -> BinaryIO:
+def opened(path: Path) -> BinaryIO:
+    """The open file, unbuffered. Raises SourceError."""
     try:
         return path.open("rb", buffering=0)
     except FileNotFoundError as error:
