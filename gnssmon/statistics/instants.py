@@ -219,6 +219,6 @@ class Sliding:
         if not len(self._step_ms):
             return np.full(len(total), np.nan)
         step_ms = self._step_ms[np.maximum(high - 1, 0)]
-        with np.errstate(invalid="ignore"):
-            due = np.where(np.isfinite(step_ms), np.maximum(np.floor(self._window_ms / step_ms), 1.0), np.nan)
+        # A window shorter than the stream's own step may hold nothing while nothing is missing.
+        due = np.where(step_ms <= self._window_ms, np.floor(self._window_ms / step_ms), np.nan)
         return np.minimum(total / due, 1.0)
