@@ -1,0 +1,82 @@
+"""What the commands with a screen share: its options, the terminal that it needs, and running it."""
+
+from __future__ import annotations
+
+import os
+import sys
+from collections.abc import Callable, Sequence
+from dataclasses import replace
+from typing import Any
+
+import click
+
+from gnssmon import cli
+from gnssmon.clocks import Clock
+from gnssmon.errors import SourceError
+from gnssmon.monitor import Settings
+from gnssmon.session import Watcher
+from gnssmon.sources.source import Source
+
+THIN_PACE_S = 2.0
+"""Between two pictures on a slow line."""
+
+
+def screen_options(command: Callable[..., Any]) -> Callable[..., Any]:
+    """Add ``--plain`` and ``--thin`` to a command."""
+    options = (
+        click.option("--plain", is_flag=True, help="Draw with ASCII characters only."),
+        click.option("--thin", is_flag=True, help="For a slow line: no colours, a picture every two seconds."),
+    )
+    for option in reversed(options):
+        command = option(command)
+    return command
+
+
+def need_terminal() -> None:
+    """Raise SourceError where no dashboard can be drawn."""
+    dumb = os.environ.get("TERM", "") in ("", "dumb") and os.name != "nt"
+    if dumb or not sys.stdout.isatty() or not sys.stdin.isatty():
+        why = "TERM is 'dumb'" if dumb else "this is not one"
+        raise click.UsageError(f"the dashboard needs a terminal, and {why}; 'gnssmon check SOURCE' needs none")
+
+
+def show(
+    sources: Sequence[Source],
+    settings: Settings,
+    clock: Clock,
+    *,
+    watchers: Sequence[tuple[Watcher, ...]] = (),
+    plain: bool = False,
+    thin: bool = False,
+    simulated: bool = False,
+) -> int:
+    """Run the dashboard over the sources until the user leaves; returns the exit code. Raises what a session raised."""
+    if thin:
+        os.environ["NO_COLOR"] = "1"  # Read once by the screen library when it is imported.
+    from gnssmon.dashboard.app import Dashboard
+    from gnssmon.dashboard.feed import PACE_S, Feed
+
+    feeds = tuple(
+        Feed(
+            source,
+            replace(settings, site=replace(settings.site, baud=source.baud)),
+            clock,
+            watchers=watchers[i] if watchers else (),
+            pace_s=THIN_PACE_S if thin else PACE_S,
+            simulated=simulated,
+        )
+        for i, source in enumerate(sources)
+    )
+    app = Dashboard(feeds, plain=plain or not _knows_braille(), thin=thin)
+    app.run(mouse=False)
+    for feed in feeds:
+        if feed.failure is not None:
+            raise feed.failure
+        if feed.problem:
+            raise SourceError(feed.problem)
+    return app.return_code or cli.ACCEPTED
+
+
+def _knows_braille() -> bool:
+    encoding = (sys.stdout.encoding or "").lower().replace("-", "")
+    return encoding == "utf8" and os.environ.get("TERM") not in ("linux", "vt100", "vt220")

@@ -1,0 +1,194 @@
+"""Feed: runs a session in a thread and hands its newest snapshot to the screen.
+
+The snapshot is taken in the monitor's own thread, at most twice a second and never for more than a fifth of its time.
+One that was not yet drawn is replaced by the newer one: a slow screen misses pictures, never data.
+"""
+
+from __future__ import annotations
+
+import threading
+from collections.abc import Callable
+from contextlib import suppress
+from dataclasses import dataclass, replace
+
+from gnssmon import session
+from gnssmon.chunks import Chunk
+from gnssmon.clocks import Clock
+from gnssmon.monitor import Monitor, Settings
+from gnssmon.replay.player import Player
+from gnssmon.snapshot import Snapshot, SourceFacts
+from gnssmon.sources.source import Source
+from gnssmon.statistics.subject import Span
+
+PACE_S = 0.5
+"""Least time between two snapshots."""
+
+LARGEST_SHARE = 0.2
+"""Of the monitor's time that may go into snapshots."""
+
+
+@dataclass(frozen=True, slots=True)
+class Window:
+    """A window of time that a key chooses."""
+
+    words: str
+    length_s: float | None = None
+    """Back from now; None: since start, or since the mark."""
+    marked: bool = False
+
+
+WINDOWS = (
+    Window("since start"),
+    Window("last hour", 3600.0),
+    Window("last 10 min", 600.0),
+    Window("last minute", 60.0),
+    Window("since mark", marked=True),
+)
+
+
+class Feed:
+    """One source under way. Its methods may be called from any thread; ``post`` is called from its own."""
+
+    def __init__(
+        self,
+        source: Source,
+        settings: Settings,
+        clock: Clock,
+        *,
+        watchers: tuple[session.Watcher, ...] = (),
+        pace_s: float = PACE_S,
+        simulated: bool = False,
+    ) -> None:
+        self.source = source
+        self.player = source if isinstance(source, Player) else None
+        self.settings = settings
+        self.clock = clock
+        self.watchers = watchers
+        self.pace_s = pace_s
+        self.window = WINDOWS[0]
+        self.mark_ms: int | None = None
+        self.problem = ""
+        """Why the source ended early; untrusted."""
+        self.failure: BaseException | None = None
+        """A fault of our own that ended the session."""
+        self._facts = SourceFacts(label=source.label, kind=source.kind, size=source.size, simulated=simulated)
+        self._monitor = Monitor(settings, self._facts)
+        self._stop = threading.Event()
+        self._thread: threading.Thread | None = None
+        self._post: Callable[[Snapshot], None] = lambda _: None
+        self._due_s = 0.0
+        self._changed = True
+        self._shown: object = None
+        self._acknowledge = False
+
+    # For the screen
+
+    def start(self, post: Callable[[Snapshot], None]) -> None:
+        """Run the session; ``post`` gets each snapshot, in the session's thread."""
+        self._post = post
+        self._thread = threading.Thread(target=self._run, name="gnssmon session", daemon=True)
+        self._thread.start()
+
+    def stop(self) -> None:
+        """End the session and wait for it: what was received is with the recorder."""
+        self._stop.set()
+        self.source.close()
+        if self._thread is not None:
+            self._thread.join()
+
+    @property
+    def running(self) -> bool:
+        """Whether the session is under way."""
+        return self._thread is not None and self._thread.is_alive()
+
+    def choose(self, window: Window) -> None:
+        """Look at another window of time."""
+        self.window = window
+        self.refresh()
+
+    def mark(self) -> None:
+        """Set the mark to now, and look at what follows."""
+        self.mark_ms = self._monitor.now_ms
+        self.choose(WINDOWS[-1])
+
+    def acknowledge(self) -> None:
+        """Mark the open alarms as seen."""
+        self._acknowledge = True
+        self.refresh()
+
+    def refresh(self) -> None:
+        """Take a snapshot at the next look."""
+        self._changed, self._due_s = True, 0.0
+        if not self.running and self._thread is not None:
+            self._show()
+
+    # In the session's thread
+
+    def _run(self) -> None:
+        try:
+            while True:
+                outcome = session.run(self.source, self, self.watchers, self.clock, stop=self._stop, look=self._look)
+                if self.player is None or not self.player.rewound or self._stop.is_set():
+                    break
+                self._monitor = Monitor(self.settings, self._facts)
+            self.problem = outcome.problem
+        except BaseException as error:
+            self.failure = error
+            self.problem = f"{type(error).__name__}: {error}"
+        finally:
+            for watcher in self.watchers:
+                close = getattr(watcher, "close", None)
+                if close is not None:
+                    with suppress(OSError):
+                        close()
+        if not self._stop.is_set():
+            self._show()
+
+    def feed(self, chunk: Chunk) -> None:
+        """As the session asks of a monitor."""
+        self._changed = True
+        self._monitor.feed(chunk)
+
+    def finish(self) -> None:
+        """As the session asks of a monitor."""
+        self._monitor.finish()
+
+    def _look(self) -> None:
+        now_s = self.clock.steady()
+        if now_s < self._due_s:
+            return
+        state = (self.source.state, self.player.paused, self.player.rate) if self.player else self.source.state
+        if not self._changed and state == self._shown:
+            return
+        self._changed, self._shown = False, state
+        self._show()
+        after_s = self.clock.steady()
+        self._due_s = max(now_s + self.pace_s, after_s + (after_s - now_s) * (1.0 / LARGEST_SHARE - 1.0))
+
+    def _show(self) -> None:
+        monitor = self._monitor
+        if self._acknowledge:
+            self._acknowledge = False
+            monitor.acknowledge()
+        source = self.source
+        state = self.problem or source.state
+        monitor.source = replace(self._facts, size=source.size, sha256=source.sha256, state=state)
+        snapshot = monitor.snapshot(self._span(monitor.now_ms), window=self.window.words)
+        self._post(replace(snapshot, progress=self._progress()))
+
+    def _span(self, now_ms: int | None) -> Span:
+        if self.window.marked:
+            return Span(from_ms=self.mark_ms)
+        if self.window.length_s is None or now_ms is None:
+            return Span()
+        # Half-open: the epoch of now and those of the length before it.
+        return Span(from_ms=now_ms + 1 - round(self.window.length_s * 1000.0))
+
+    def _progress(self) -> dict[str, float]:
+        source, progress = self.source, {}
+        if source.size:
+            progress["share"] = min(1.0, source.consumed / source.size)
+        if self.player is not None:
+            progress["speed"] = self.player.rate
+            progress["paused"] = float(self.player.paused)
+        return progress
