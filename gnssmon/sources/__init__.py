@@ -85,6 +85,12 @@ def _stdin(address: Address, clock: Clock) -> Source:
     return standard_input(clock)
 
 
+def _sim(address: Address, clock: Clock) -> Source:
+    from gnssmon.sources.simulated import Simulated
+
+    return Simulated(address.text, address.target)
+
+
 SCHEMES: tuple[Scheme, ...] = (
     Scheme("serial", "/dev/ttyUSB0@9600", "a serial port; without @BAUD the rate is found", _serial, may_return=True),
     Scheme("url", "rfc2217://server:4000", "any URL that pyserial opens", _serial, may_return=True),
@@ -94,6 +100,7 @@ SCHEMES: tuple[Scheme, ...] = (
     Scheme("recording", "2025-05-20_roof/", "a folder that 'gnssmon record' has written", _recording),
     Scheme("pipe", "receiver.fifo", "a named pipe", _pipe),
     Scheme("stdin", "-", "standard input", _stdin),
+    Scheme("sim", "sim:open_roof", "a simulated receiver; 'sim:open_roof?seed=7&duration=24h' chooses the run", _sim),
 )
 
 

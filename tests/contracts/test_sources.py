@@ -155,6 +155,16 @@ def cut(path: Path) -> Iterator[tuple[Source, bytes]]:
     yield Between(open_source(str(path), clock=CLOCK), for_s=60.0), DATA
 
 
+@contextmanager
+def simulated(rate: float | None) -> Iterator[tuple[Source, bytes]]:
+    text = "sim:open_roof?duration=20s"
+    expected = b"".join(chunk.data for chunk in open_source(text, clock=CLOCK).chunks())
+    if rate is None:
+        yield open_source(text, clock=CLOCK), expected
+    else:
+        yield Player(lambda: open_source(text, clock=CLOCK), CLOCK, rate=rate), expected
+
+
 def makings(folder: Path) -> dict[str, AbstractContextManager[tuple[Source, bytes]]]:
     return {
         "serial": pseudo_terminal("@4800", hold=False),
@@ -173,6 +183,8 @@ def makings(folder: Path) -> dict[str, AbstractContextManager[tuple[Source, byte
         "recording, played": played(folder / "recording"),
         "pipe": fifo(folder / "fifo"),
         "stdin": pipe(),
+        "sim": simulated(None),
+        "sim, played": simulated(100.0),
     }
 
 
