@@ -234,3 +234,13 @@ def test_link_stays_a_link(tmp_path: Path):
 
     assert (tmp_path / "link.html").is_symlink()
     assert (tmp_path / "real.html").read_text() == "new"
+
+
+def test_a_line_is_broken_over_a_gap():
+    """Where minutes are missing the line shows nothing, rather than a straight guess."""
+    from gnssmon.report.figures.drawing import broken
+
+    minute, values = broken(np.array([1, 2, 3, 9, 10]), np.array([5.0, 6.0, 7.0, 8.0, 9.0]))
+
+    assert minute.tolist() == [1, 2, 3, 4, 9, 10]
+    assert np.isnan(values).tolist() == [False, False, False, True, False, False]

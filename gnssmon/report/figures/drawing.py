@@ -24,6 +24,10 @@ COLOURS = ("#0072B2", "#E69F00", "#009E73", "#D55E00", "#CC79A7", "#56B4E9", "#8
 """Told apart by colour-blind people: M. Okabe & K. Ito, Color Universal Design (2008); their yellow made darker."""
 MARKERS = "osD^vPX*"
 
+GAP = 2.5
+FEW_POINTS = 60
+"""So few points of a line are marked, so that one that stands alone is seen."""
+
 QUALITIES = {
     0: ("no fix", "#D55E00"),
     1: ("autonomous", "#56B4E9"),
@@ -101,6 +105,20 @@ def svg(drawing: Drawing, snapshot: Snapshot) -> str | None:
 def moments(axis_ms: npt.NDArray[np.int64], snapshot: Snapshot) -> npt.NDArray[np.datetime64]:
     """Instants of the time axis as UTC for a time axis on paper, shape as given."""
     return (axis_ms + (snapshot.utc_offset_ms or 0)).astype("datetime64[ms]")
+
+
+def broken(
+    minute: npt.NDArray[np.int64], values: npt.NDArray[np.float64]
+) -> tuple[npt.NDArray[np.int64], npt.NDArray[np.float64]]:
+    """The same series with a NaN in each gap, so that a line does not pretend to know what lies between.
+
+    ``minute`` has shape (t,), ``values`` shape (t,) or (t, k). A gap is a step of more than ``GAP`` usual ones.
+    """
+    if len(minute) < 3:
+        return minute, values
+    steps = np.diff(minute)
+    after = np.flatnonzero(steps > GAP * np.median(steps)) + 1
+    return np.insert(minute, after, minute[after - 1] + 1), np.insert(values, after, np.nan, axis=0)
 
 
 def time_axis(axes: Any, snapshot: Snapshot) -> None:

@@ -6,7 +6,17 @@ from typing import Any
 
 import numpy as np
 
-from gnssmon.report.figures.drawing import FULL_MM, HALF_MM, MARKERS, Drawing, colour, moments, time_axis
+from gnssmon.report.figures.drawing import (
+    FEW_POINTS,
+    FULL_MM,
+    HALF_MM,
+    MARKERS,
+    Drawing,
+    broken,
+    colour,
+    moments,
+    time_axis,
+)
 from gnssmon.snapshot import Snapshot
 
 FEWEST = 20
@@ -50,10 +60,12 @@ def _draw_by_elevation(figure: Any, snapshot: Snapshot) -> None:
 def _draw_over_time(figure: Any, snapshot: Snapshot) -> None:
     picture = snapshot.pictures.level
     axes = figure.subplots()
-    when = moments(picture.minute * 60_000, snapshot)
+    minute, level_dbhz = broken(picture.minute, picture.level_dbhz.T)
+    when = moments(minute * 60_000, snapshot)
+    mark = "." if len(when) < FEW_POINTS else None
     for row, label in enumerate(picture.signals):
-        if np.isfinite(picture.level_dbhz[row]).any():
-            axes.plot(when, picture.level_dbhz[row], color=colour(row), linewidth=0.8, label=label)
+        if np.isfinite(level_dbhz[:, row]).any():
+            axes.plot(when, level_dbhz[:, row], color=colour(row), linewidth=0.8, marker=mark, label=label)
     axes.set_ylabel("level, dB-Hz")
     time_axis(axes, snapshot)
     figure.legend(*axes.get_legend_handles_labels(), loc="outside right upper")

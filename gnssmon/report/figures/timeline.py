@@ -7,7 +7,17 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
-from gnssmon.report.figures.drawing import FULL_MM, GREY, INK, QUALITIES, Drawing, moments, time_axis
+from gnssmon.report.figures.drawing import (
+    FEW_POINTS,
+    FULL_MM,
+    GREY,
+    INK,
+    QUALITIES,
+    Drawing,
+    broken,
+    moments,
+    time_axis,
+)
 from gnssmon.snapshot import Snapshot
 
 MOST_BARS = 720
@@ -16,12 +26,15 @@ MOST_BARS = 720
 
 def _draw_position(figure: Any, snapshot: Snapshot) -> None:
     picture = snapshot.pictures.scatter
-    when = moments(picture.minute * 60_000, snapshot)
+    minute, mean_m = broken(picture.minute, picture.minute_mean_m)
+    when = moments(minute * 60_000, snapshot)
     rows = figure.subplots(3, 1, sharex=True)
     for axis, (axes, name) in enumerate(zip(rows, ("east", "north", "up"), strict=True)):
-        values = picture.minute_mean_m[:, axis]
+        values = mean_m[:, axis]
         axes.axhline(0.0, color=GREY, linewidth=0.6)
-        axes.plot(when, values, color=INK, linewidth=0.7, marker="." if len(values) < 60 else None, markersize=2.5)
+        axes.plot(
+            when, values, color=INK, linewidth=0.7, marker="." if len(values) < FEW_POINTS else None, markersize=2.5
+        )
         axes.set_ylabel(f"{name}, m")
     time_axis(rows[-1], snapshot)
 
@@ -43,7 +56,8 @@ def _draw_fix(figure: Any, snapshot: Snapshot) -> None:
     top.set_ylabel("epochs, %")
     for start_ms, _ in snapshot.pictures.stream.gaps:
         top.axvline(moments(np.array([start_ms]), snapshot)[0], ymin=0.94, color=INK, linewidth=1.2)
-    bottom.plot(when, used, color=INK, linewidth=0.8, drawstyle="steps-post")
+    minute, used = broken(minute, used)
+    bottom.plot(moments(minute * 60_000, snapshot), used, color=INK, linewidth=0.8, drawstyle="steps-post")
     bottom.set_ylim(bottom=0)
     bottom.set_ylabel("satellites")
     time_axis(bottom, snapshot)
