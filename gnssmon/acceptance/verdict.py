@@ -19,6 +19,9 @@ Result = Literal["met", "not met", "undecided"]
 FARTHEST_S = 30 * 86_400.0
 """A forecast beyond a month is no forecast."""
 
+FARTHEST_TIMES = 1e4
+"""A value so close to the limit, in half widths, lies on it."""
+
 Estimates = Callable[[float], Mapping[str, Estimate]]
 """All estimates by name, with intervals of the confidence that is asked for."""
 
@@ -172,7 +175,7 @@ def _forecast(criterion: Criterion, value: float, interval: tuple[float, float],
             continue
         half, other = (interval[1] - value, value - interval[0])[:: 1 if edge >= value else -1]
         distance = abs(edge - value)
-        if distance <= 0.0:
+        if half > distance * FARTHEST_TIMES:
             return None
         needed = max(needed, (half / distance) ** (1 if other <= 0.0 else 2))
     longer_s = duration_s * (needed - 1.0)

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 
 import pytest
-from hypothesis import given
+from hypothesis import example, given
 from hypothesis import strategies as st
 
 from gnssmon.acceptance.criteria import CriteriaSet, Criterion
@@ -158,6 +158,7 @@ def test_each_criterion_is_judged_at_its_own_confidence():
 
 
 @given(st.floats(-10, 10), st.floats(0, 5), st.floats(0, 5), st.floats(-10, 10))
+@example(1e-200, 1.0, 1.0, 0.0)
 def test_widening_an_interval_never_decides(value, below, above, limit):
     """What is undecided stays so, and what is met never becomes not met, when the interval grows."""
     criterion = Criterion(quantity=NAME, at_most=limit)
