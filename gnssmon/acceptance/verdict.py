@@ -175,7 +175,7 @@ def _forecast(criterion: Criterion, value: float, interval: tuple[float, float],
             continue
         half, other = (interval[1] - value, value - interval[0])[:: 1 if edge >= value else -1]
         distance = abs(edge - value)
-        if half > distance * FARTHEST_TIMES:
+        if distance <= 0.0 or half > distance * FARTHEST_TIMES:
             return None
         needed = max(needed, (half / distance) ** (1 if other <= 0.0 else 2))
     longer_s = duration_s * (needed - 1.0)

@@ -159,13 +159,14 @@ def test_each_criterion_is_judged_at_its_own_confidence():
 
 @given(st.floats(-10, 10), st.floats(0, 5), st.floats(0, 5), st.floats(-10, 10))
 @example(1e-200, 1.0, 1.0, 0.0)
+@example(3.0, 1.0, 0.0, 3.0)
 def test_widening_an_interval_never_decides(value, below, above, limit):
     """What is undecided stays so, and what is met never becomes not met, when the interval grows."""
-    criterion = Criterion(quantity=NAME, at_most=limit)
-    narrow = _judged(criterion, Estimate(value, (value - below / 2, value + above / 2))).result
-    wide = _judged(criterion, Estimate(value, (value - below, value + above))).result
+    for criterion in (Criterion(quantity=NAME, at_most=limit), Criterion(quantity=NAME, at_least=limit)):
+        narrow = _judged(criterion, Estimate(value, (value - below / 2, value + above / 2))).result
+        wide = _judged(criterion, Estimate(value, (value - below, value + above))).result
 
-    assert wide in (narrow, "undecided")
+        assert wide in (narrow, "undecided")
 
 
 @pytest.mark.parametrize(
