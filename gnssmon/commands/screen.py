@@ -6,7 +6,7 @@ import os
 import sys
 from collections.abc import Callable, Sequence
 from dataclasses import replace
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import click
 
@@ -14,8 +14,11 @@ from gnssmon import cli
 from gnssmon.clocks import Clock
 from gnssmon.errors import SourceError
 from gnssmon.monitor import Settings
-from gnssmon.session import Watcher
+from gnssmon.printable import printable
 from gnssmon.sources.source import Source
+
+if TYPE_CHECKING:
+    from gnssmon.recording.recorder import Recorder
 
 THIN_PACE_S = 2.0
 """Between two pictures on a slow line."""
@@ -45,10 +48,9 @@ def show(
     settings: Settings,
     clock: Clock,
     *,
-    watchers: Sequence[tuple[Watcher, ...]] = (),
+    recorders: Sequence[Recorder] = (),
     plain: bool = False,
     thin: bool = False,
-    simulated: bool = False,
 ) -> int:
     """Run the dashboard over the sources until the user leaves; returns the exit code. Raises what a session raised."""
     if thin:
@@ -61,14 +63,15 @@ def show(
             source,
             replace(settings, site=replace(settings.site, baud=source.baud)),
             clock,
-            watchers=watchers[i] if watchers else (),
+            recorder=recorders[i] if recorders else None,
             pace_s=THIN_PACE_S if thin else PACE_S,
-            simulated=simulated,
         )
         for i, source in enumerate(sources)
     )
     app = Dashboard(feeds, plain=plain or not _knows_braille(), thin=thin)
     app.run(mouse=False)
+    for recorder in recorders:
+        click.echo(f"{recorder.bytes} bytes kept in '{printable(str(recorder.folder))}'", err=True)
     for feed in feeds:
         if feed.failure is not None:
             raise feed.failure

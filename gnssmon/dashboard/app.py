@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+import asyncio
 import math
+import signal
 from collections.abc import Iterable
+from contextlib import suppress
 from typing import ClassVar
 
 from textual.app import App, ComposeResult, SystemCommand
@@ -84,10 +87,18 @@ class Dashboard(App[None]):
 
     def on_mount(self) -> None:
         self.theme = "ansi-dark"
+        self._end_on_signals()
         for feed in self._feeds:
             feed.start(lambda snapshot, feed=feed: self._take(feed, snapshot))  # type: ignore[misc]
         self.set_interval(AGE_S, self._grow_older)
         self._paint()
+
+    def _end_on_signals(self) -> None:
+        """A hung-up terminal, or a stop from outside, ends the session as a key would: the recording is closed."""
+        loop = asyncio.get_running_loop()
+        for name in ("SIGHUP", "SIGTERM"):
+            with suppress(NotImplementedError, RuntimeError, AttributeError, ValueError):
+                loop.add_signal_handler(getattr(signal, name), self.exit)
 
     def on_unmount(self) -> None:
         for feed in self._feeds:

@@ -8,13 +8,13 @@ from __future__ import annotations
 
 import threading
 from collections.abc import Callable
-from contextlib import suppress
 from dataclasses import dataclass, replace
 
 from gnssmon import session
 from gnssmon.chunks import Chunk
 from gnssmon.clocks import Clock
 from gnssmon.monitor import Monitor, Settings
+from gnssmon.recording.recorder import Recorder
 from gnssmon.replay.player import Player
 from gnssmon.snapshot import Snapshot, SourceFacts
 from gnssmon.sources.source import Source
@@ -55,15 +55,14 @@ class Feed:
         settings: Settings,
         clock: Clock,
         *,
-        watchers: tuple[session.Watcher, ...] = (),
+        recorder: Recorder | None = None,
         pace_s: float = PACE_S,
-        simulated: bool = False,
     ) -> None:
         self.source = source
         self.player = source if isinstance(source, Player) else None
         self.settings = settings
         self.clock = clock
-        self.watchers = watchers
+        self.recorder = recorder
         self.pace_s = pace_s
         self.window = WINDOWS[0]
         self.mark_ms: int | None = None
@@ -71,7 +70,9 @@ class Feed:
         """Why the source ended early; untrusted."""
         self.failure: BaseException | None = None
         """A fault of our own that ended the session."""
-        self._facts = SourceFacts(label=source.label, kind=source.kind, size=source.size, simulated=simulated)
+        self._facts = SourceFacts(
+            label=source.label, kind=source.kind, size=source.size, simulated=source.kind == "simulated"
+        )
         self._monitor = Monitor(settings, self._facts)
         self._stop = threading.Event()
         self._thread: threading.Thread | None = None
@@ -125,9 +126,10 @@ class Feed:
     # In the session's thread
 
     def _run(self) -> None:
+        watchers = () if self.recorder is None else (self.recorder,)
         try:
             while True:
-                outcome = session.run(self.source, self, self.watchers, self.clock, stop=self._stop, look=self._look)
+                outcome = session.run(self.source, self, watchers, self.clock, stop=self._stop, look=self._look)
                 if self.player is None or not self.player.rewound or self._stop.is_set():
                     break
                 self._monitor = Monitor(self.settings, self._facts)
@@ -136,11 +138,8 @@ class Feed:
             self.failure = error
             self.problem = f"{type(error).__name__}: {error}"
         finally:
-            for watcher in self.watchers:
-                close = getattr(watcher, "close", None)
-                if close is not None:
-                    with suppress(OSError):
-                        close()
+            if self.recorder is not None:
+                self.recorder.close()
         if not self._stop.is_set():
             self._show()
 
@@ -172,6 +171,8 @@ class Feed:
             monitor.acknowledge()
         source = self.source
         state = self.problem or source.state
+        if self.recorder is not None and self.recorder.problem:
+            state = f"RECORDING FAILED: {self.recorder.problem}"
         monitor.source = replace(self._facts, size=source.size, sha256=source.sha256, state=state)
         snapshot = monitor.snapshot(self._span(monitor.now_ms), window=self.window.words)
         self._post(replace(snapshot, progress=self._progress()))
@@ -188,6 +189,8 @@ class Feed:
         source, progress = self.source, {}
         if source.size:
             progress["share"] = min(1.0, source.consumed / source.size)
+        if self.recorder is not None:
+            progress["recorded_bytes"] = float(self.recorder.bytes)
         if self.player is not None:
             progress["speed"] = self.player.rate
             progress["paused"] = float(self.player.paused)

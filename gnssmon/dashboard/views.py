@@ -9,6 +9,7 @@ from gnssmon.acceptance.verdict import in_words
 from gnssmon.dashboard.drawing import Grid, Size
 from gnssmon.dashboard.panels import panel
 from gnssmon.dashboard.panels.panel import clock_time, metres, number, quality_tone, quality_words, value
+from gnssmon.report import words
 from gnssmon.snapshot import Snapshot
 
 Column = tuple[int, tuple[tuple[str, int], ...]]
@@ -179,9 +180,9 @@ def _verdict(snapshot: Snapshot) -> tuple[str, str, str]:
     if not verdict.criteria:
         return "?", "nothing to judge by", "quiet"
     pending = [one for one in verdict.criteria if one.result == "undecided"]
-    longer = f" {in_words(verdict.needed_s)} more" if verdict.needed_s is not None else ""
+    longer = f", {in_words(verdict.needed_s)} more" if verdict.needed_s is not None else ""
     what = f"{pending[0].quantity}" + (f" +{len(pending) - 1}" if len(pending) > 1 else "") if pending else ""
-    return "?", f"undecided,{longer or ' open'}: {what}", "doubt"
+    return "?", f"undecided{longer}: {what}", "doubt"
 
 
 def context(grid: Grid, snapshot: Snapshot, note: str) -> None:
@@ -192,6 +193,8 @@ def context(grid: Grid, snapshot: Snapshot, note: str) -> None:
         speed = progress["speed"]
         pace = "PAUSED" if progress.get("paused") else "as fast as possible" if math.isinf(speed) else f"×{speed:g}"
         right += f"  {pace}"
+    if "recorded_bytes" in progress:
+        right += f"  REC {words.size(int(progress['recorded_bytes']))}"
     if "share" in progress:
         right += f"  {progress['share'] * 100:.0f} %"
     if snapshot.source.state not in ("reading", ""):

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 
+from gnssmon.acceptance.verdict import in_words
 from gnssmon.dashboard.drawing import Grid, Plot, Size, ticks
 from gnssmon.dashboard.panels.panel import Panel, clock_time, number, value
 from gnssmon.snapshot import Snapshot
@@ -12,6 +13,9 @@ from gnssmon.statistics.pictures import Floats, Ints
 LABEL = 16
 
 AXIS = 5
+
+MOST_DELAY_S = 60.0
+"""A longer delay is a clock that is set wrong, or an old log that is played into a port."""
 
 
 def render(snapshot: Snapshot, size: Size) -> Grid:
@@ -22,13 +26,13 @@ def render(snapshot: Snapshot, size: Size) -> Grid:
     age, oldest = value(snapshot, "corrections.age_median_s"), value(snapshot, "corrections.age_max_s")
     first, lost = value(snapshot, "fix.time_to_first_fix_s"), value(snapshot, "fix.longest_outage_s")
     rows = [
-        ("Delay", "not known: no times of arrival" if delay is None else f"{number(delay, 3)} s median"),
-        ("  95 % below", f"{number(worst, 3)} s"),
+        ("Delay", _delay(delay)),
+        ("  95 % below", f"{number(worst, 3)} s" if not _absurd(worst) else "–"),
         ("  jitter", f"{number(jitter, 3)} s"),
         ("Clock steps", number(steps, 0)),
         ("Corrections", "none" if age is None else f"{number(age)} s old median, {number(oldest)} s at most"),
-        ("First fix after", f"{number(first)} s"),
-        ("Longest outage", f"{number(lost)} s"),
+        ("First fix after", "–" if first is None else f"{number(first)} s"),
+        ("Longest outage", "–" if lost is None else f"{number(lost)} s"),
     ]
     if delay is None:
         del rows[1:4]
@@ -38,7 +42,7 @@ def render(snapshot: Snapshot, size: Size) -> Grid:
     top = len(rows) + 1
     box = (0, top, size.width, min(14, size.height - top))
     timing, fix = snapshot.pictures.timing, snapshot.pictures.fix
-    if delay is not None:
+    if delay is not None and not _absurd(delay):
         _over_time(grid, snapshot, box, "s of delay, median by minute", timing.minute, timing.delay_median_s)
     elif age is not None:
         _over_time(
@@ -47,6 +51,19 @@ def render(snapshot: Snapshot, size: Size) -> Grid:
     else:
         _over_time(grid, snapshot, box, "satellites used, mean by minute", fix.minute, fix.used_mean)
     return grid
+
+
+def _absurd(delay_s: float | None) -> bool:
+    return delay_s is not None and not -MOST_DELAY_S < delay_s < MOST_DELAY_S
+
+
+def _delay(delay_s: float | None) -> str:
+    if delay_s is None:
+        return "not known: no arrival times"
+    if _absurd(delay_s):
+        late = "behind" if delay_s > 0 else "ahead of"
+        return f"{in_words(abs(delay_s))} {late} host's clock"
+    return f"{number(delay_s, 3)} s median"
 
 
 def _over_time(

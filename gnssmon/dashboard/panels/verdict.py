@@ -43,7 +43,8 @@ def render(snapshot: Snapshot, size: Size) -> Grid:
     if len(shown) < len(order):
         met = sum(one.result == "met" for one in order[len(shown) :])
         rest = len(order) - len(shown)
-        grid.put(2, y, f"and {rest} more, {met} of them met", "quiet", size.width - 2)
+        text = f"and {rest} more" + (", all met" if met == rest else f", {met} met" if met else "")
+        grid.put(2, y, text, "quiet", size.width - 2)
         y += 1
     if size.height - y >= 3:
         _findings(grid, snapshot, y + 1)
