@@ -1,24 +1,20 @@
-"""A simulated receiver as a source: as fast as the machine can, or at a pace."""
+"""A simulated receiver as a source, as fast as the machine can; ``replay.player`` gives it a pace."""
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterator
+from urllib.parse import parse_qsl
 
+from gnssmon import utc
 from gnssmon.chunks import Chunk, joined
-from gnssmon.clocks import Clock
 from gnssmon.errors import ConfigurationError, SourceError
+from gnssmon.printable import printable
 from gnssmon.simulation.generator import Generator
 from gnssmon.simulation.scenario import load_scenario
-from gnssmon.sources.source import WAIT_S, Kind, Source
+from gnssmon.sources.source import Kind, Source
 
-LONGEST_S = 31 * 86_400.0
-"""A paced simulation that nobody stops ends after a month."""
-
-JOINED_BYTES = 262_144
-"""Unpaced, epochs are handed on together: a monitor takes a block at once more cheaply than its epochs."""
-
-SEED = 1
+JOINED_BYTES = 65_536
+"""Epochs are handed on together: a monitor takes a block at once more cheaply than its epochs one by one."""
 
 
 class Simulated(Source):
@@ -26,54 +22,44 @@ class Simulated(Source):
 
     kind: Kind = "simulated"
 
-    def __init__(self, name: str, clock: Clock, *, label: str | None = None, seed: int = SEED) -> None:
-        """Open a scenario by name or file. Raises SourceError."""
-        super().__init__(label or f"sim:{name}")
+    def __init__(self, label: str, target: str) -> None:
+        """Open ``SCENARIO`` or ``SCENARIO?seed=7&duration=24h``, a name or a file.
+
+        Raises SourceError, and ConfigurationError for what cannot be read as a duration or as a scenario file.
+        """
+        super().__init__(label)
+        name, _, settings = target.partition("?")
+        self._seed = 1
+        self._duration_s: float | None = None
+        for key, value in parse_qsl(settings, keep_blank_values=True):
+            if key == "seed" and value.isdecimal():
+                self._seed = int(value)
+            elif key == "duration":
+                self._duration_s = utc.parse_duration_s(value)
+            else:
+                raise SourceError(
+                    f"'{printable(f'{key}={value}', 60)}' is not known to a simulation; such as 'seed=7', 'duration=24h'"
+                )
         try:
             self.scenario = load_scenario(name)
         except ConfigurationError as error:
             raise SourceError(str(error)) from error
         self.baud = self.scenario.stream.baud
-        self._clock = clock
-        self._seed = seed
-        self.rate = math.inf
-        """Simulated seconds per second; infinite: as fast as the machine can. May be changed before ``chunks``."""
-        self.duration_s: float | None = None
-        """Length of the run; None: the scenario's own, or without end when paced."""
 
     def chunks(self) -> Iterator[Chunk]:
-        paced = math.isfinite(self.rate)
-        duration_s = self.duration_s or (LONGEST_S if paced else self.scenario.duration_s)
-        run = Generator(self.scenario, duration_s=duration_s, seed=self._seed)
-        try:
-            yield from self._paced(run) if paced else self._unpaced(run)
-        finally:
-            self.state = "ended"
-
-    def _unpaced(self, run: Generator) -> Iterator[Chunk]:
         waiting: list[Chunk] = []
         size = 0
-        for arrival_s, data in run.chunks():
-            if self._closing:
-                return
-            waiting.append(Chunk(data, arrival_s))
-            size += len(data)
-            if size >= JOINED_BYTES:
-                self.consumed += size
+        try:
+            for arrival_s, data in Generator(self.scenario, duration_s=self._duration_s, seed=self._seed).chunks():
+                if self._closing:
+                    return
+                waiting.append(Chunk(data, arrival_s))
+                size += len(data)
+                self.consumed += len(data)
+                if size >= JOINED_BYTES:
+                    yield joined(waiting)
+                    waiting, size = [], 0
+            if waiting:
                 yield joined(waiting)
-                waiting, size = [], 0
-        if waiting:
-            self.consumed += size
-            yield joined(waiting)
-
-    def _paced(self, run: Generator) -> Iterator[Chunk]:
-        begun = self._clock.steady()
-        first_s = self.scenario.stream.start_ms / 1000.0
-        for arrival_s, data in run.chunks():
-            due = begun + (arrival_s - first_s) / self.rate
-            while (left := due - self._clock.steady()) > 0.0 and not self._closing:
-                self._clock.sleep(min(left, WAIT_S))
-            if self._closing:
-                return
-            self.consumed += len(data)
-            yield Chunk(data, arrival_s)
+        finally:
+            self.state = "ended"
