@@ -9,6 +9,10 @@ B 51, 1989). Because the parts add up to α, the chance that any of the interval
 the correlation between looks (Bonferroni); no model of the data is needed beyond that each interval holds its own
 confidence. Measured: tests/benchmarks/sequential_error_rates.py.
 
+What an interval cannot know, no plan of looks can mend: a spread about a run's own mean leaves out errors slower than
+the run, and a share says little before several spells of what it counts were seen. Such criteria need a least duration
+(``minimum_duration``) that is long against those; the presets have one.
+
 The rate is that of one criterion. Of m criteria that all lie exactly on their limits, one is rejected by chance up to
 m times as often; acceptance needs all of them and is not more often wrong.
 """
