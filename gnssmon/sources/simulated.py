@@ -21,6 +21,9 @@ FIRST_BYTES, MOST_BYTES = 2048, 262_144
 """Pieces are joined to chunks that double from the first to the most: a viewer sees the first epoch at once, a check
 of a day is not slowed down by small chunks."""
 
+LONGEST_BURST_S = 0.5
+"""What the bytes of one epoch may take on the line without being mistaken for silence in front of them."""
+
 DEFAULT_SEED = 1
 
 
@@ -55,7 +58,8 @@ class Simulated(Source):
             for arrival_s, data in generate(self.scenario, duration_s=self.duration_s, seed=self.seed):
                 if self._closing:
                     return
-                while arrival_s - last_s > SILENCE_S:
+                # Times are those of last bytes: a longer burst than the one before is no silence.
+                while arrival_s - last_s > SILENCE_S + LONGEST_BURST_S:
                     if waiting:
                         yield joined(waiting)
                         waiting, size = [], 0
