@@ -22,6 +22,9 @@ FARTHEST_S = 30 * 86_400.0
 FARTHEST_TIMES = 1e4
 """A value so close to the limit, in half widths, lies on it."""
 
+LOPSIDED = 1.2
+"""An interval whose upper part is so many times its lower one is taken to be even on a logarithmic scale."""
+
 Estimates = Callable[[float], Mapping[str, Estimate]]
 """All estimates by name, with intervals of the confidence that is asked for."""
 
@@ -167,17 +170,24 @@ def _forecast(criterion: Criterion, value: float, interval: tuple[float, float],
     """How much longer until the interval, shrinking about the present value, leaves the limit.
 
     A half width falls with the square root of the time; that of a share of which nothing (or only) was seen falls with
-    the time itself. None: the value lies on the limit, or the time is beyond ``FARTHEST_S``.
+    the time itself. Intervals of spreads are lopsided because they are even on a logarithmic scale: there they shrink.
+    None: the value lies on the limit, or the time is beyond ``FARTHEST_S``.
     """
     needed = 1.0
+    low, high = interval
+    lopsided = low > 0.0 and high - value > LOPSIDED * (value - low) > 0.0
     for edge in _band(criterion):
-        if not math.isfinite(edge) or not interval[0] <= edge <= interval[1]:
+        if not low <= edge <= high:
             continue
-        half, other = (interval[1] - value, value - interval[0])[:: 1 if edge >= value else -1]
-        distance = abs(edge - value)
+        if lopsided:
+            end, start, limit = math.log(high if edge >= value else low), math.log(value), math.log(edge)
+        else:
+            end, start, limit = high if edge >= value else low, value, edge
+        half, distance = abs(end - start), abs(limit - start)
         if distance <= 0.0 or half > distance * FARTHEST_TIMES:
             return None
-        needed = max(needed, (half / distance) ** (1 if other <= 0.0 else 2))
+        one_sided = (value - low if edge >= value else high - value) <= 0.0
+        needed = max(needed, (half / distance) ** (1 if one_sided else 2))
     longer_s = duration_s * (needed - 1.0)
     return longer_s if 0.0 < longer_s <= FARTHEST_S else None
 
