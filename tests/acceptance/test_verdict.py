@@ -123,7 +123,7 @@ def test_forecast_of_a_share_never_seen_follows_time_itself():
 
 
 def test_forecast_of_a_spread_is_made_on_a_logarithmic_scale():
-    """An interval from a fourth to the fourfold, the limit at the double: half the logarithm, so four times the time."""
+    """From a fourth to the fourfold, the limit at the double: half the logarithm, so four times the time."""
     judged = _judged(AT_MOST, Estimate(1.5, (1.5 / 4.0, 1.5 * 4.0)), duration_s=1000.0)
 
     assert judged.needed_s == pytest.approx(3000.0)
