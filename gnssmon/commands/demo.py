@@ -21,8 +21,8 @@ SPEED = 10.0
 @screen_options
 def command(speed: float, plain: bool, thin: bool) -> int:
     """Show the dashboard on a simulated receiver: no hardware, no file, no network."""
-    need_terminal()
     clock = SystemClock()
     settings = settings_from(criteria=None, reference=None, frame=None, epoch=None, antenna_height=None, mask=None)
     player = Player(lambda: open_source(SCENE, clock=clock), clock, rate=speed)
+    need_terminal()
     return show((player,), settings, clock, plain=plain, thin=thin)

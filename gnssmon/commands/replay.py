@@ -11,6 +11,8 @@ from gnssmon import utc
 from gnssmon.clocks import SystemClock
 from gnssmon.commands.screen import need_terminal, screen_options, show
 from gnssmon.commands.site import settings_from, site_options
+from gnssmon.replay.index import build_index
+from gnssmon.replay.player import Player
 from gnssmon.sources import open_source
 from gnssmon.sources.source import Source
 
@@ -49,11 +51,9 @@ def command(log: str, speed: float, from_: str | None, to: str | None, plain: bo
 
         return Between(source, from_=first, to=last)
 
-    from gnssmon.replay.player import Player
-
     player = Player(opened, clock, rate=speed)
     try:
         need_terminal()
-        return show((player,), settings, clock, plain=plain, thin=thin)
+        return show((player,), settings, clock, index=lambda: build_index(opened()), plain=plain, thin=thin)
     finally:
         player.close()

@@ -12,13 +12,14 @@ import click
 
 from gnssmon import cli
 from gnssmon.clocks import Clock
-from gnssmon.errors import SourceError
+from gnssmon.errors import ConfigurationError, SourceError
 from gnssmon.monitor import Settings
 from gnssmon.printable import printable
 from gnssmon.sources.source import Source
 
 if TYPE_CHECKING:
     from gnssmon.recording.recorder import Recorder
+    from gnssmon.replay.index import Index
 
 THIN_PACE_S = 2.0
 """Between two pictures on a slow line."""
@@ -36,11 +37,11 @@ def screen_options(command: Callable[..., Any]) -> Callable[..., Any]:
 
 
 def need_terminal() -> None:
-    """Raise SourceError where no dashboard can be drawn."""
+    """Raise ConfigurationError where no dashboard can be drawn."""
     dumb = os.environ.get("TERM", "") in ("", "dumb") and os.name != "nt"
     if dumb or not sys.stdout.isatty() or not sys.stdin.isatty():
         why = "TERM is 'dumb'" if dumb else "this is not one"
-        raise click.UsageError(f"the dashboard needs a terminal, and {why}; 'gnssmon check SOURCE' needs none")
+        raise ConfigurationError(f"the dashboard needs a terminal, and {why}; 'gnssmon check SOURCE' needs none")
 
 
 def show(
@@ -49,6 +50,7 @@ def show(
     clock: Clock,
     *,
     recorders: Sequence[Recorder] = (),
+    index: Callable[[], Index] | None = None,
     plain: bool = False,
     thin: bool = False,
 ) -> int:
@@ -64,6 +66,7 @@ def show(
             replace(settings, site=replace(settings.site, baud=source.baud)),
             clock,
             recorder=recorders[i] if recorders else None,
+            index=index,
             pace_s=THIN_PACE_S if thin else PACE_S,
         )
         for i, source in enumerate(sources)

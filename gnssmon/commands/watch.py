@@ -30,13 +30,13 @@ def command(sources: tuple[str, ...], record: Path | None, plain: bool, thin: bo
     With several, n shows the next one. Without any, the ports of this computer are listened to, and the one that
     speaks NMEA is shown.
     """
-    need_terminal()
     settings = settings_from(**site)
     clock = SystemClock()
     opened: list[Source] = []
     recorders: list[Recorder] = []
     try:
         opened.extend(_opened(text, clock) for text in sources or (_found(clock),))
+        need_terminal()
         if record is not None:
             for i, source in enumerate(opened, 1):
                 folder = record if len(opened) == 1 else record / f"source_{i}"

@@ -11,7 +11,6 @@ from typing import ClassVar
 
 from textual.app import App, ComposeResult, SystemCommand
 from textual.binding import Binding, BindingType
-from textual.events import Resize
 from textual.message import Message
 from textual.screen import Screen
 from textual.widgets import Footer
@@ -30,7 +29,7 @@ SPEEDS = (0.1, 0.5, 1.0, 2.0, 5.0, 10.0, 30.0, 60.0, 300.0, math.inf)
 AGE_S = 1.0
 """How often the age of a live source's fix is told anew."""
 
-SMALL_JUMP_S, LARGE_JUMP_S = 10.0, 60.0
+SMALL_JUMP_S = 10.0
 
 
 class Newer(Message):
@@ -45,6 +44,8 @@ class Dashboard(App[None]):
     TITLE = "gnssmon"
     CSS_PATH = "theme.tcss"
     BINDINGS: ClassVar[list[BindingType]] = [
+        Binding("question_mark", "help", "Help", key_display="?"),
+        Binding("q", "quit", "Quit"),
         *(Binding(view.key, f"view('{view.name}')", view.title) for view in VIEWS),
         Binding("w", "window", "Window", show=False),
         Binding("m", "mark", "Mark", show=False),
@@ -57,6 +58,8 @@ class Dashboard(App[None]):
         Binding("shift+right", "jump(6)", "On 1 min", show=False),
         Binding("full_stop", "step(1)", "Next epoch", show=False),
         Binding("comma", "step(-1)", "Epoch before", show=False),
+        Binding("left_square_bracket", "event(-1)", "Event before", show=False),
+        Binding("right_square_bracket", "event(1)", "Next event", show=False),
         Binding("g", "go_to", "Go to time", show=False),
         Binding("f", "freeze", "Freeze", show=False),
         Binding("a", "acknowledge", "Seen", show=False),
@@ -64,8 +67,6 @@ class Dashboard(App[None]):
         Binding("down", "row(-1)", "Newer", show=False),
         Binding("t", "choice", "Kind", show=False),
         Binding("n", "next_source", "Next source", show=False),
-        Binding("question_mark", "help", "Help", key_display="?"),
-        Binding("q", "quit", "Quit"),
     ]
 
     def __init__(self, feeds: tuple[Feed, ...], *, plain: bool = False, thin: bool = False) -> None:
@@ -122,8 +123,8 @@ class Dashboard(App[None]):
         if self._frozen is None and self._feed.source.kind == "live":
             self._paint()
 
-    def on_resize(self, event: Resize) -> None:
-        self.call_after_refresh(self._paint)
+    def on_canvas_resized(self) -> None:
+        self._paint()
 
     def snapshot(self) -> Snapshot | None:
         """What is on the screen."""
@@ -179,12 +180,15 @@ class Dashboard(App[None]):
         """Go on or back in a log by steps of ten seconds."""
         player = self._feed.player
         if player is not None and player.axis_ms is not None:
-            player.jump(player.axis_ms + round(steps * SMALL_JUMP_S * 1000.0))
+            self._feed.jump(player.axis_ms + round(steps * SMALL_JUMP_S * 1000.0))
 
     def action_step(self, epochs: int) -> None:
         """Go one epoch on or back in a log, and pause."""
-        if self._feed.player is not None:
-            self._feed.player.step(epochs)
+        self._feed.step(epochs)
+
+    def action_event(self, step: int) -> None:
+        """Go to the next or last event met in a log."""
+        self._feed.to_event(step)
 
     def action_go_to(self) -> None:
         """Ask for a time and go there."""
@@ -201,7 +205,7 @@ class Dashboard(App[None]):
             self.notify(str(error), severity="warning", markup=False)
             return
         if at_ms is not None:
-            player.jump(at_ms)
+            self._feed.jump(at_ms)
 
     def action_freeze(self) -> None:
         """Hold the picture; what comes is still received, recorded and counted."""

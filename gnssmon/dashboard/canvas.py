@@ -7,6 +7,7 @@ from typing import ClassVar
 from rich.segment import Segment
 from rich.style import Style
 from textual.geometry import Region
+from textual.message import Message
 from textual.strip import Strip
 from textual.widget import Widget
 
@@ -20,6 +21,9 @@ class Canvas(Widget):
     """Shows the grid that it was last given."""
 
     COMPONENT_CLASSES: ClassVar[set[str]] = {f"tone-{tone}" for tone in TONES if tone}
+
+    class Resized(Message):
+        """There are more or fewer cells now."""
 
     def __init__(self) -> None:
         super().__init__()
@@ -35,6 +39,9 @@ class Canvas(Widget):
         regions = changes(old, grid)
         if regions:
             self.refresh(*regions)
+
+    def on_resize(self) -> None:
+        self.post_message(self.Resized())
 
     def text(self) -> str:
         """What is on it, as text."""

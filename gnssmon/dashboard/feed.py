@@ -6,15 +6,19 @@ One that was not yet drawn is replaced by the newer one: a slow screen misses pi
 
 from __future__ import annotations
 
+import math
 import threading
 from collections.abc import Callable
+from contextlib import suppress
 from dataclasses import dataclass, replace
 
 from gnssmon import session
 from gnssmon.chunks import Chunk
 from gnssmon.clocks import Clock
+from gnssmon.errors import GnssmonError
 from gnssmon.monitor import Monitor, Settings
 from gnssmon.recording.recorder import Recorder
+from gnssmon.replay.index import Index
 from gnssmon.replay.player import Player
 from gnssmon.snapshot import Snapshot, SourceFacts
 from gnssmon.sources.source import Source
@@ -22,6 +26,15 @@ from gnssmon.statistics.subject import Span
 
 PACE_S = 0.5
 """Least time between two snapshots."""
+
+MOST_EVENTS = 5000
+"""Instants kept to jump to."""
+
+NEAR_MS = 3000
+"""An event that was just jumped to must not hold the way back."""
+
+LOOK_S = 0.1
+"""How often the end of a log looks for a wish."""
 
 LARGEST_SHARE = 0.2
 """Of the monitor's time that may go into snapshots."""
@@ -57,6 +70,7 @@ class Feed:
         *,
         recorder: Recorder | None = None,
         pace_s: float = PACE_S,
+        index: Callable[[], Index] | None = None,
     ) -> None:
         self.source = source
         self.player = source if isinstance(source, Player) else None
@@ -64,6 +78,11 @@ class Feed:
         self.clock = clock
         self.recorder = recorder
         self.pace_s = pace_s
+        self._build_index = index
+        self._index: Index | None = None
+        self._events_ms: set[int] = set()
+        """UTC of what was met in a log, before and behind where it stands now."""
+        self._went_to_ms = 0
         self.window = WINDOWS[0]
         self.mark_ms: int | None = None
         self.problem = ""
@@ -79,6 +98,9 @@ class Feed:
         self._post: Callable[[Snapshot], None] = lambda _: None
         self._due_s = 0.0
         self._changed = True
+        self._ended = False
+        """A log is at its end, and may be played again from an earlier place."""
+        self._again = threading.Event()
         self._shown: object = None
         self._acknowledge = False
 
@@ -89,6 +111,8 @@ class Feed:
         self._post = post
         self._thread = threading.Thread(target=self._run, name="gnssmon session", daemon=True)
         self._thread.start()
+        if self._build_index is not None:
+            threading.Thread(target=self._look_through, name="gnssmon index", daemon=True).start()
 
     def stop(self) -> None:
         """End the session and wait for it: what was received is with the recorder."""
@@ -117,23 +141,67 @@ class Feed:
         self._acknowledge = True
         self.refresh()
 
+    def to_event(self, step: int) -> None:
+        """Let a log go to the next (1) or last (-1) of the events that were met so far."""
+        if self.player is None or (now_ms := self.player.axis_ms) is None:
+            return
+        # The player's axis of time and the monitor's need not begin together: they meet in UTC.
+        there_ms = self.player.utc_offset_ms or 0
+        known = [at - there_ms for at in self._events_ms]
+        if step > 0:
+            # Events inside a gap all show the epoch before it: the one gone to last is behind us.
+            ahead = [at for at in known if at > max(now_ms, self._went_to_ms)]
+        else:
+            ahead = [at for at in known if at < now_ms - NEAR_MS]
+        if ahead:
+            self.jump(min(ahead) if step > 0 else max(ahead))
+            self._went_to_ms = min(ahead) if step > 0 else 0
+
+    def jump(self, axis_ms: int) -> None:
+        """Let a log go to an instant; from its end, back."""
+        player = self.player
+        if player is None or player.axis_ms is None or (self._ended and axis_ms >= player.axis_ms):
+            return
+        if axis_ms < player.axis_ms and math.isinf(player.rate):
+            player.pause()  # at full speed the end would be there again at once
+        player.jump(axis_ms)
+        if self._ended:
+            self._again.set()
+
+    def step(self, epochs: int) -> None:
+        """Let a log go some epochs on or back, and pause."""
+        player = self.player
+        if player is None or (self._ended and epochs >= 0):
+            return
+        player.step(epochs)
+        if self._ended:
+            self._again.set()
+
     def refresh(self) -> None:
         """Take a snapshot at the next look."""
         self._changed, self._due_s = True, 0.0
         if not self.running and self._thread is not None:
             self._show()
 
+    def _look_through(self) -> None:
+        if self._build_index is not None:
+            with suppress(GnssmonError, OSError):
+                self._index = self._build_index()
+
     # In the session's thread
 
     def _run(self) -> None:
         watchers = () if self.recorder is None else (self.recorder,)
         try:
-            while True:
+            while not self._stop.is_set():
                 outcome = session.run(self.source, self, watchers, self.clock, stop=self._stop, look=self._look)
-                if self.player is None or not self.player.rewound or self._stop.is_set():
+                self.problem = outcome.problem
+                if self.player is None or self._stop.is_set():
                     break
+                if not self.player.rewound:
+                    self._show()
+                    self._wait_for_jump(self.player)
                 self._monitor = Monitor(self.settings, self._facts)
-            self.problem = outcome.problem
         except BaseException as error:
             self.failure = error
             self.problem = f"{type(error).__name__}: {error}"
@@ -142,6 +210,18 @@ class Feed:
                 self.recorder.close()
         if not self._stop.is_set():
             self._show()
+
+    def _wait_for_jump(self, player: Player) -> None:
+        """At the end of a log: stay, until someone leaves or jumps back."""
+        self._ended = True
+        while self._ended and not self._stop.is_set():
+            if self._again.wait(LOOK_S):
+                self._again.clear()
+                self._ended = False
+                player.rewound = True
+            elif self._changed:
+                self._changed = False
+                self._show()
 
     def feed(self, chunk: Chunk) -> None:
         """As the session asks of a monitor."""
@@ -175,6 +255,10 @@ class Feed:
             state = f"RECORDING FAILED: {self.recorder.problem}"
         monitor.source = replace(self._facts, size=source.size, sha256=source.sha256, state=state)
         snapshot = monitor.snapshot(self._span(monitor.now_ms), window=self.window.words)
+        if self.player is not None and len(self._events_ms) < MOST_EVENTS:
+            here_ms = snapshot.utc_offset_ms or 0
+            self._events_ms |= {event.raised_ms + here_ms for event in snapshot.alarms}
+            self._events_ms |= {at_ms + here_ms for at_ms, _ in snapshot.pictures.stream.gaps}
         self._post(replace(snapshot, progress=self._progress()))
 
     def _span(self, now_ms: int | None) -> Span:
@@ -186,9 +270,11 @@ class Feed:
         return Span(from_ms=now_ms + 1 - round(self.window.length_s * 1000.0))
 
     def _progress(self) -> dict[str, float]:
-        source, progress = self.source, {}
-        if source.size:
-            progress["share"] = min(1.0, source.consumed / source.size)
+        progress: dict[str, float] = {}
+        at_ms = None if self.player is None else self.player.axis_ms
+        share = None if self._index is None or at_ms is None else self._index.share_at(at_ms)
+        if share is not None:
+            progress["share"] = share
         if self.recorder is not None:
             progress["recorded_bytes"] = float(self.recorder.bytes)
         if self.player is not None:

@@ -23,7 +23,8 @@ ctrl+p        all commands                q   quit
 Of a log:
 space         pause, go on                + - faster, slower
 left, right   10 s back, on               with shift: a minute
-, .           one epoch back, on          g   go to a time"""
+, .           one epoch back, on          g   go to a time
+[ ]           event before, next"""
 
 
 class HelpPage(ModalScreen[None]):

@@ -187,11 +187,11 @@ def _verdict(snapshot: Snapshot) -> tuple[str, str, str]:
 
 def context(grid: Grid, snapshot: Snapshot, note: str) -> None:
     """Row 1: the source, its time, the window, and how a log plays."""
-    right = f"window: {snapshot.window}"
-    progress = snapshot.progress
+    progress, wide = snapshot.progress, grid.width >= 76
+    right = f"window: {snapshot.window}" if wide else snapshot.window
     if "speed" in progress:
         speed = progress["speed"]
-        pace = "PAUSED" if progress.get("paused") else "as fast as possible" if math.isinf(speed) else f"×{speed:g}"
+        pace = "PAUSED" if progress.get("paused") else "full speed" if math.isinf(speed) else f"×{speed:g}"
         right += f"  {pace}"
     if "recorded_bytes" in progress:
         right += f"  REC {words.size(int(progress['recorded_bytes']))}"

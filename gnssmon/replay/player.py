@@ -140,6 +140,7 @@ class Player(Source):
         if self._passes:
             self._log = self._open_log()
             self._started.clear()
+            self._closing = False  # whoever read up to the jump has closed us
         self._passes += 1
         self.rewound = self._rewind = self._stepping = False
         self._steps, self._last_s = 0, math.nan
