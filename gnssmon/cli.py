@@ -9,14 +9,8 @@ import traceback
 import click
 
 from gnssmon import __version__
-from gnssmon.errors import GnssmonError
+from gnssmon.errors import ACCEPTED, INTERRUPTED, OWN_FAULT, SOURCE_FAILED, WRONG_USAGE, GnssmonError
 from gnssmon.printable import printable
-
-ACCEPTED, REJECTED, WRONG_USAGE, UNDECIDED, SOURCE_FAILED, INTERRUPTED = 0, 1, 2, 3, 4, 130
-"""Exit codes of the contract."""
-
-OWN_FAULT = 70
-"""A fault of the program itself (EX_SOFTWARE of BSD's sysexits): Python's own 1 would read as a rejection."""
 
 VERBS = {
     "demo": "the dashboard on a built-in simulated site",

@@ -1,4 +1,4 @@
-"""Every exception of our own, as a tree.
+"""Every exception of our own, as a tree; and the exit codes.
 
     GnssmonError
     ├── SourceError          the world failed: a port, socket or file could not be opened, or was lost for good (exit 4)
@@ -10,11 +10,17 @@ Bad bytes in a stream are never an exception: they are counted and kept as a fac
 Each message says what happened, where, and what to do next, in one line.
 """
 
+ACCEPTED, REJECTED, WRONG_USAGE, UNDECIDED, SOURCE_FAILED, INTERRUPTED = 0, 1, 2, 3, 4, 130
+"""Exit codes of the contract."""
+
+OWN_FAULT = 70
+"""A fault of the program itself (EX_SOFTWARE of BSD's sysexits): Python's own 1 would read as a rejection."""
+
 
 class GnssmonError(Exception):
     """Base of all errors that the command line turns into one line on stderr and an exit code."""
 
-    exit_code = 4
+    exit_code = SOURCE_FAILED
 
 
 class SourceError(GnssmonError):
@@ -24,7 +30,7 @@ class SourceError(GnssmonError):
 class ConfigurationError(GnssmonError):
     """What the user asked for cannot be understood; names the file, line and key where there are any."""
 
-    exit_code = 2
+    exit_code = WRONG_USAGE
 
 
 class RecordingError(GnssmonError):

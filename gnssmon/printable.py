@@ -27,7 +27,7 @@ def printable(text: str | bytes, longest: int = LONGEST) -> str:
 
 
 def _plain(character: str) -> bool:
-    # Categories C* are controls, format (bidirectional) marks, surrogates, private and unassigned; Zl and Zp break lines.
+    # Categories C* are controls, format (bidirectional) marks, surrogates, private, unassigned; Zl and Zp break lines.
     category = unicodedata.category(character)
     return not (category.startswith("C") or category in {"Zl", "Zp"})
 

@@ -10,7 +10,7 @@ from typing import Any
 
 import click
 
-from gnssmon import cli, session, utc
+from gnssmon import errors, session, utc
 from gnssmon.acceptance.sequential import DAY_S, Looks
 from gnssmon.clocks import SystemClock
 from gnssmon.commands.site import settings_from, site_options
@@ -80,11 +80,13 @@ def command(
 
         page.write(facts, snapshot, report)
     if outcome.ended == "stopped" and not run.decided:
-        return cli.INTERRUPTED
+        return errors.INTERRUPTED
     if outcome.ended == "early":
         click.echo(f"gnssmon: {printable(outcome.problem)}", err=True)
-        return cli.SOURCE_FAILED
-    return {"accept": cli.ACCEPTED, "reject": cli.REJECTED, "undecided": cli.UNDECIDED}[snapshot.verdict.verdict]
+        return errors.SOURCE_FAILED
+    return {"accept": errors.ACCEPTED, "reject": errors.REJECTED, "undecided": errors.UNDECIDED}[
+        snapshot.verdict.verdict
+    ]
 
 
 class _Run:

@@ -8,7 +8,7 @@ from typing import Any
 
 import click
 
-from gnssmon import cli, session
+from gnssmon import errors, session
 from gnssmon.acceptance.comparison import compare
 from gnssmon.clocks import SystemClock
 from gnssmon.errors import ConfigurationError, SourceError
@@ -50,8 +50,8 @@ def command(before: str, after: str, json_: str | None) -> int:
     if json_ != "-":
         click.echo("\n".join(comparisons.lines(compared, first, second)))
     if compared.outcome == "cannot be compared":
-        return cli.UNDECIDED
-    return cli.REJECTED if compared.outcome in ("worse", "mixed") else cli.ACCEPTED
+        return errors.UNDECIDED
+    return errors.REJECTED if compared.outcome in ("worse", "mixed") else errors.ACCEPTED
 
 
 def _result(name: str) -> dict[str, Any]:

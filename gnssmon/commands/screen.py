@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
-from gnssmon import cli
+from gnssmon import errors
 from gnssmon.clocks import Clock
 from gnssmon.errors import ConfigurationError, SourceError
 from gnssmon.monitor import Settings
@@ -80,7 +80,7 @@ def show(
             raise feed.failure
         if feed.problem:
             raise SourceError(feed.problem)
-    return app.return_code or cli.ACCEPTED
+    return app.return_code or errors.ACCEPTED
 
 
 def _knows_braille() -> bool:

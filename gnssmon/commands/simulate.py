@@ -14,7 +14,7 @@ from typing import Any
 
 import click
 
-from gnssmon import cli, session, utc
+from gnssmon import errors, session, utc
 from gnssmon.clocks import SystemClock
 from gnssmon.errors import ConfigurationError, OutputError
 from gnssmon.printable import printable
@@ -67,7 +67,7 @@ def command(
         stopped = stop.is_set()
     if truth is not None:
         _keep(truth, run.truth())
-    return cli.INTERRUPTED if stopped else 0
+    return errors.INTERRUPTED if stopped else 0
 
 
 def _rate(pace: str | None, *, live: bool) -> float:
