@@ -71,6 +71,7 @@ class Monitor:
 
     def finish(self) -> None:
         """The stream has ended: what was still open counts."""
+        self.news = []
         self._take(self._pipeline.finish())
 
     def acknowledge(self) -> int:
@@ -81,6 +82,12 @@ class Monitor:
     def now_ms(self) -> int | None:
         """Latest time on the axis; None before the first epoch."""
         return None if self._last is None else self._last[0]
+
+    @property
+    def first_ms(self) -> int | None:
+        """First time on the axis; None before it is known."""
+        first = self._pipeline.extent.first
+        return None if first is None else first[0]
 
     @property
     def duration_s(self) -> float:

@@ -12,16 +12,19 @@ import click
 
 from gnssmon import errors, session, utc
 from gnssmon.acceptance.sequential import DAY_S, Looks
+from gnssmon.acceptance.verdict import in_words
 from gnssmon.clocks import SystemClock
 from gnssmon.commands.site import settings_from, site_options
-from gnssmon.errors import GnssmonError, OutputError
+from gnssmon.errors import GnssmonError
 from gnssmon.monitor import Monitor, Settings
+from gnssmon.notices import Notices
 from gnssmon.printable import printable
+from gnssmon.report import files, text
 from gnssmon.report import result as results
-from gnssmon.report import text
 from gnssmon.snapshot import Snapshot, SourceFacts
 from gnssmon.sources import hold_source
 from gnssmon.sources.source import Source
+from gnssmon.statistics.subject import Span
 
 SHOWN_S = 1.0
 """Between two lines of progress."""
@@ -44,6 +47,8 @@ STANDARD_OUTPUT = "-"
 @click.option("--json", "json_", metavar="FILE|-", help="Write the result as JSON; - for standard output.")
 @click.option("--report", type=click.Path(dir_okay=False, path_type=Path), metavar="FILE.html", help="Write a report.")
 @click.option("--record", type=click.Path(file_okay=False, path_type=Path), metavar="DIR", help="Keep the bytes.")
+@click.option("--alarm-log", type=click.Path(dir_okay=False, path_type=Path), metavar="FILE", help="Add alarms to it.")
+@click.option("--on-alarm", metavar="COMMAND", help="Run when an alarm is raised or cleared; no shell is involved.")
 @click.option("--until-decided", is_flag=True, help="Stop when the criteria are decided; the error rate is kept.")
 def command(
     source: str,
@@ -53,6 +58,8 @@ def command(
     json_: str | None,
     report: Path | None,
     record: Path | None,
+    alarm_log: Path | None,
+    on_alarm: str | None,
     until_decided: bool,
     **site: Any,
 ) -> int:
@@ -67,11 +74,15 @@ def command(
         "for_s": None if for_ is None else utc.parse_duration_s(for_),
     }
     if json_ not in (None, STANDARD_OUTPUT):
-        _check_writable(Path(json_))
+        files.check_writable(Path(json_))
     if report is not None:
-        _check_writable(report)
-    run = _Run(source, settings, span, record, until_decided)
-    outcome = run.go()
+        files.check_writable(report)
+    notices = Notices(SystemClock(), log=alarm_log, command=on_alarm)
+    try:
+        run = _Run(source, settings, span, record=record, until_decided=until_decided, notices=notices)
+        outcome = run.go()
+    finally:
+        notices.close()
     snapshot = run.snapshot()
     facts = results.result(snapshot)
     _tell(facts, json_)
@@ -93,7 +104,14 @@ class _Run:
     """One source through one monitor, looked at now and then."""
 
     def __init__(
-        self, label: str, settings: Settings, span: dict[str, Any], record: Path | None, until_decided: bool
+        self,
+        label: str,
+        settings: Settings,
+        span: dict[str, Any],
+        *,
+        record: Path | None,
+        until_decided: bool,
+        notices: Notices,
     ) -> None:
         self._clock = SystemClock()
         self._for_s: float | None = span["for_s"]
@@ -121,7 +139,13 @@ class _Run:
         self._looks = Looks(self._for_s or DAY_S) if until_decided else None
         self._taken = 0
         self._shown_s = -SHOWN_S
-        self.decided = False
+        self._decided: Snapshot | None = None
+        self._notices = notices
+
+    @property
+    def decided(self) -> bool:
+        """A look has decided, and the run was stopped for it."""
+        return self._decided is not None
 
     def go(self) -> session.Outcome:
         """Run to the end, a decision, a signal."""
@@ -144,21 +168,24 @@ class _Run:
                     close()
             if self._shown_s > 0.0 and sys.stderr.isatty():
                 click.echo(err=True)
-            for told in (*(getattr(watcher, "problem", "") for watcher in self._watchers), *self._source.doubts):
+            self._notices.tell(self._monitor.news)
+            troubles = [getattr(watcher, "problem", "") for watcher in self._watchers]
+            for told in (*troubles, self._notices.problem, *self._source.doubts):
                 if told:
                     click.echo(f"gnssmon: {printable(told)}", err=True)
 
     def snapshot(self) -> Snapshot:
         """The result, by the confidences that the looks taken have left."""
-        self._monitor.source = replace(
-            self._facts, size=self._source.size, sha256=self._source.sha256, state=self._source.state
-        )
+        source = replace(self._facts, size=self._source.size, sha256=self._source.sha256, state=self._source.state)
+        self._monitor.source = source
+        if self._decided is not None:
+            return replace(self._decided, source=source)
         if self._looks is None:
             return self._monitor.snapshot()
-        last = self._looks.confidence(self._taken - 1) if self.decided else self._looks.confidence_at_end(self._taken)
-        return self._monitor.snapshot(confidence=last)
+        return self._monitor.snapshot(confidence=self._looks.confidence_at_end(self._taken))
 
     def _look(self, stop: threading.Event) -> None:
+        self._notices.tell(self._monitor.news)
         now_s = self._clock.steady()
         if sys.stderr.isatty() and now_s - self._shown_s >= SHOWN_S:
             self._shown_s = now_s
@@ -166,19 +193,23 @@ class _Run:
             click.echo(
                 f"\r{share}{printable(self._source.label, 40)}: {self._source.state}".ljust(70), nl=False, err=True
             )
-        looks = self._looks
-        if looks is None or self._taken >= len(looks.times_s):
-            return
-        duration = self._monitor.duration_s
-        if duration < looks.times_s[self._taken]:
-            return
-        while self._taken + 1 < len(looks.times_s) and duration >= looks.times_s[self._taken + 1]:
+        self._judge(stop)
+
+    def _judge(self, stop: threading.Event) -> None:
+        """Look where the plan says so: at stretches of the stream, never at how it happened to be cut."""
+        looks, first_ms = self._looks, self._monitor.first_ms
+        while looks is not None and first_ms is not None and self._taken < len(looks.times_s):
+            length_s = looks.times_s[self._taken]
+            if self._monitor.duration_s < length_s:
+                return
+            span = Span(to_ms=first_ms + round(length_s * 1000.0))
+            confidence = looks.confidence(self._taken)
             self._taken += 1
-        confidence = looks.confidence(self._taken)
-        self._taken += 1
-        if self._monitor.snapshot(confidence=confidence).verdict.verdict != "undecided":
-            self.decided = True
-            stop.set()
+            snapshot = self._monitor.snapshot(span, window=f"the first {in_words(length_s)}", confidence=confidence)
+            if snapshot.verdict.verdict != "undecided":
+                self._decided = snapshot
+                stop.set()
+                return
 
 
 def _tell(facts: dict[str, Any], json_: str | None) -> None:
@@ -187,21 +218,6 @@ def _tell(facts: dict[str, Any], json_: str | None) -> None:
         click.echo(results.dumps(facts), nl=False)
         return
     if json_ is not None:
-        try:
-            Path(json_).write_text(results.dumps(facts), encoding="utf-8")
-        except OSError as error:
-            raise OutputError(f"'{printable(json_, 200)}' cannot be written: {error.strerror}") from error
+        files.write(Path(json_), results.dumps(facts))
     for line in text.lines(facts):
         click.echo(line)
-
-
-def _check_writable(path: Path) -> None:
-    """Say before a long run that its result could not be written. Raises OutputError."""
-    folder = path.parent
-    if not folder.is_dir():
-        raise OutputError(f"'{printable(str(path), 200)}' cannot be written: there is no folder '{folder}'")
-    try:
-        with path.open("ab"):
-            pass
-    except OSError as error:
-        raise OutputError(f"'{printable(str(path), 200)}' cannot be written: {error.strerror}") from error
