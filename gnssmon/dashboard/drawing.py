@@ -29,6 +29,10 @@ _BRAILLE = ((0x01, 0x08), (0x02, 0x10), (0x04, 0x20), (0x40, 0x80))
 _EIGHTHS = " ▏▎▍▌▋▊▉█"
 
 
+FARTHEST = 1e12
+"""Data beyond this are not drawn: they are no metres, seconds or decibels of any receiver."""
+
+
 @dataclass(frozen=True, slots=True)
 class Size:
     """The cells there are to draw on, and what may be drawn in them."""
@@ -158,7 +162,7 @@ class Plot:
         self._across, self._down = (1, 1) if grid.plain else (2, 4)
         columns, rows = max(1, self.width * self._across), max(1, self.height * self._down)
         self._columns, self._rows = columns, rows
-        (x0, x1), (y0, y1) = x_range, y_range
+        (x0, x1), (y0, y1) = (r if _drawable(*r) else (0.0, 1.0) for r in (x_range, y_range))
         step_x = (x1 - x0) / columns or 1.0
         step_y = (y1 - y0) / rows or 1.0
         if equal:
@@ -230,10 +234,16 @@ class Plot:
         self._dots.clear()
 
     def _dot(self, x: float, y: float) -> tuple[int, int]:
+        if not (math.isfinite(x) and math.isfinite(y)):
+            return -1, -1  # outside
         far = 1e6
         column = min(far, max(-far, (x - self._x0) / self._step_x))
         row = min(far, max(-far, (self._y1 - y) / self._step_y))
         return math.floor(column), math.floor(row)
+
+
+def _drawable(low: float, high: float) -> bool:
+    return math.isfinite(low) and math.isfinite(high) and abs(low) < FARTHEST and abs(high) < FARTHEST
 
 
 def round_step(span: float, most: int) -> float:
@@ -249,6 +259,8 @@ def round_step(span: float, most: int) -> float:
 
 def ticks(low: float, high: float, most: int) -> list[float]:
     """Round numbers from ``low`` to ``high``, at most ``most`` steps apart."""
+    if not _drawable(low, high):
+        return []
     step = round_step(high - low, most)
     first, last = math.ceil(low / step - 1e-9), math.floor(high / step + 1e-9)
     return [i * step for i in range(first, min(last, first + 100) + 1)]

@@ -98,9 +98,11 @@ class Feed:
         self._post: Callable[[Snapshot], None] = lambda _: None
         self._due_s = 0.0
         self._changed = True
+        self._finished = False
         self._ended = False
         """A log is at its end, and may be played again from an earlier place."""
         self._again = threading.Event()
+        """Someone wants to go back; set before the player is told, so that a log that ends just then goes back too."""
         self._shown: object = None
         self._acknowledge = False
 
@@ -164,18 +166,18 @@ class Feed:
             return
         if axis_ms < player.axis_ms and math.isinf(player.rate):
             player.pause()  # at full speed the end would be there again at once
-        player.jump(axis_ms)
-        if self._ended:
+        if axis_ms < player.axis_ms:
             self._again.set()
+        player.jump(axis_ms)
 
     def step(self, epochs: int) -> None:
         """Let a log go some epochs on or back, and pause."""
         player = self.player
         if player is None or (self._ended and epochs >= 0):
             return
-        player.step(epochs)
-        if self._ended:
+        if epochs < 0:
             self._again.set()
+        player.step(epochs)
 
     def refresh(self) -> None:
         """Take a snapshot at the next look."""
@@ -198,10 +200,12 @@ class Feed:
                 self.problem = outcome.problem
                 if self.player is None or self._stop.is_set():
                     break
-                if not self.player.rewound:
+                if self.player.rewound:
+                    self._again.clear()
+                else:
                     self._show()
                     self._wait_for_jump(self.player)
-                self._monitor = Monitor(self.settings, self._facts)
+                self._monitor, self._finished = Monitor(self.settings, self._facts), False
         except BaseException as error:
             self.failure = error
             self.problem = f"{type(error).__name__}: {error}"
@@ -231,6 +235,7 @@ class Feed:
     def finish(self) -> None:
         """As the session asks of a monitor."""
         self._monitor.finish()
+        self._finished = True
 
     def _look(self) -> None:
         now_s = self.clock.steady()
@@ -250,7 +255,8 @@ class Feed:
             self._acknowledge = False
             monitor.acknowledge()
         source = self.source
-        state = self.problem or source.state
+        # The source has ended before its last epoch is closed: the numbers are final a little later.
+        state = self.problem or ("reading" if source.state == "ended" and not self._finished else source.state)
         if self.recorder is not None and self.recorder.problem:
             state = f"RECORDING FAILED: {self.recorder.problem}"
         monitor.source = replace(self._facts, size=source.size, sha256=source.sha256, state=state)

@@ -82,7 +82,8 @@ def _criterion(grid: Grid, y: int, one: Judged, wide: bool) -> None:
 
 
 def _findings(grid: Grid, snapshot: Snapshot, y: int) -> None:
-    grid.put(0, y, "What stands out" if snapshot.findings else "Nothing stands out.", "title")
+    quiet = "Nothing stands out." if snapshot.stream.sentences else "Nothing to look at yet."
+    grid.put(0, y, "What stands out" if snapshot.findings else quiet, "title")
     y += 1
     for one in snapshot.findings:
         if y >= grid.height:
