@@ -20,9 +20,12 @@ class GaussMarkov:
 
     def take(self, count: int) -> Floats:
         """The next samples, shape (count, width): x_k = ρ x_(k-1) + √(1 - ρ²) w_k."""
-        from scipy.signal import lfilter
-
-        noise = self._rng.standard_normal((count, len(self._last))) * math.sqrt(1.0 - self._rho**2)
-        values, _ = lfilter([1.0], [1.0, -self._rho], noise, axis=0, zi=self._rho * self._last[None, :])
-        self._last = values[-1]
-        return np.asarray(values)
+        values = self._rng.standard_normal((count, len(self._last))) * math.sqrt(1.0 - self._rho**2)
+        # A loop in Python over whole rows: scipy's filter would be no faster here, and takes a second to import.
+        last = self._last
+        for row in values:
+            row += self._rho * last
+            last = row
+        if count:
+            self._last = values[-1].copy()
+        return values

@@ -6,19 +6,19 @@ start of the run.
 
 from __future__ import annotations
 
+import dataclasses
 from dataclasses import dataclass, field
 from importlib import resources
 from pathlib import Path
 from typing import Annotated, Literal
 
 from gnssmon.configuration import Duration, load, nearest
-from gnssmon.constellations.systems import SIGNALS
 from gnssmon.errors import ConfigurationError
 from gnssmon.printable import printable
+from gnssmon.simulation.happenings import Event, known_label
 from gnssmon.utc import parse_instant
 
 SLOWEST_HZ, FASTEST_HZ = 0.2, 50.0
-SIMULATED_LABELS = tuple(dict.fromkeys(signal.label for signal in SIGNALS if signal.letter in "GREC"))
 
 
 def start_ms(value: object) -> int:
@@ -29,6 +29,12 @@ def start_ms(value: object) -> int:
     if not instant.dated:
         raise ConfigurationError(f"'{printable(value, 40)}' has no date; wanted such as \"2026-03-01T00:00:00Z\"")
     return instant.ms
+
+
+def _between(low: float, high: float, **values: float) -> None:
+    for name, value in values.items():
+        if not low <= value <= high:
+            raise ConfigurationError(f"{name} = {value:g} lies between {low:g} and {high:g}")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -44,25 +50,35 @@ class SiteTruth:
     separation_m: float = 20.0
     """Geoid separation that the receiver believes in."""
     speed_mps: float = 0.0
-    """Slow movement of the antenna, towards ``course_deg``."""
+    """Movement of the antenna, towards ``course_deg``; some kilometres at most, over which the sky is held the same."""
     course_deg: float = 0.0
 
     def __post_init__(self) -> None:
-        if not -90.0 <= self.latitude_deg <= 90.0 or not -180.0 <= self.longitude_deg <= 180.0:
-            raise ConfigurationError("latitude lies between -90 and 90, longitude between -180 and 180 degrees")
+        _between(-89.9, 89.9, latitude_deg=self.latitude_deg)
+        _between(-180.0, 180.0, longitude_deg=self.longitude_deg)
+        _between(-1000.0, 20_000.0, height_m=self.height_m)
+        _between(0.0, 50.0, speed_mps=self.speed_mps)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Antenna:
-    zenith_dbhz: float = 50.0
-    """C/N0 of a satellite of average power overhead on the first band."""
-    rolloff_db: float = 9.0
+    """The antenna, what follows it up to the receiver, and what reflects beside it."""
+
+    gain_zenith_dbic: float = 3.0
+    rolloff_db: float = 11.0
     """Gain at the zenith minus gain at the horizon."""
     tilt_deg: float = 0.0
     tilt_azimuth_deg: float = 0.0
     """Where the antenna leans to."""
-    loss_db: float = 0.0
-    """Loss before the first amplifier, on all bands, all the time."""
+    loss_before_db: float = 0.0
+    """Before the amplifier: a wet connector, a lossy adaptor."""
+    amplifier_gain_db: float = 28.0
+    """Negative, with a noise figure as large: an amplifier without supply, which only lets some of the signal leak."""
+    amplifier_noise_db: float = 1.5
+    cable_loss_db: float = 3.0
+    """Behind the amplifier."""
+    band_loss_db: dict[str, float] = field(default_factory=dict)
+    """By label: loss of C/N0 in an antenna or filter that is not made for that band."""
     reflector_height_m: float = 0.0
     """Antenna above a level reflecting ground or roof; 0: none."""
     reflector_strength: float = 0.3
@@ -71,6 +87,13 @@ class Antenna:
     """Distance of a reflecting wall; 0: none."""
     wall_azimuth_deg: float = 0.0
     wall_strength: float = 0.3
+
+    def __post_init__(self) -> None:
+        _between(0.0, 60.0, loss_before_db=self.loss_before_db, cable_loss_db=self.cable_loss_db)
+        _between(0.0, 0.95, reflector_strength=self.reflector_strength, wall_strength=self.wall_strength)
+        _between(0.0, 100.0, reflector_height_m=self.reflector_height_m, wall_distance_m=self.wall_distance_m)
+        for label in self.band_loss_db:
+            known_label(label)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -84,8 +107,8 @@ class Obstacle:
     """40 hides a satellite, 5 is a tree."""
 
     def __post_init__(self) -> None:
-        if not 0.0 <= self.elevation_deg <= 90.0:
-            raise ConfigurationError("elevation_deg lies between 0 and 90")
+        _between(0.0, 90.0, elevation_deg=self.elevation_deg)
+        _between(0.0, 100.0, loss_db=self.loss_db)
 
 
 Mode = Literal["autonomous", "differential", "rtk"]
@@ -96,18 +119,25 @@ class ReceiverTruth:
     signals: tuple[str, ...] = ("G1", "G5", "R1", "R2", "E1", "E5a", "C1", "C2a")
     """Labels of the signals received, of which the first of a system is the main one."""
     mode: Mode = "autonomous"
+    noise_figure_db: float = 6.0
     mask_deg: float = 5.0
     """Satellites below are not used."""
     tracking_dbhz: float = 24.0
     """Signals below this are lost."""
     use_dbhz: float = 28.0
     """Satellites whose main signal is below this are not used."""
-    time_to_first_fix_s: Duration = 0.0
-    """After power-up; 0: the run begins with a fix."""
-    float_s: Duration = 30.0
+    time_to_first_fix_s: Duration = field(default=0.0, metadata={"key": "time_to_first_fix"})
+    """After power-up, from cold; 0: the run begins with a fix."""
+    reacquisition_s: Duration = field(default=2.0, metadata={"key": "reacquisition"})
+    """Of a signal that was lost, once it is strong enough again."""
+    float_s: Duration = field(default=30.0, metadata={"key": "float_time"})
     """From the first corrections to fixed ambiguities."""
-    correction_latency_s: float = 1.0
+    correction_latency_s: float = 0.8
     correction_interval_s: float = 1.0
+    coasting_s: Duration = field(default=0.0, metadata={"key": "coasting"})
+    """For so long after the loss of a fix, positions are estimated from the last ones."""
+    static_hold: bool = False
+    """The position stands still as long as there is a fix."""
     bias_east_m: float = 0.0
     bias_north_m: float = 0.0
     bias_up_m: float = 0.0
@@ -117,10 +147,13 @@ class ReceiverTruth:
 
     def __post_init__(self) -> None:
         for label in self.signals:
-            if label not in SIMULATED_LABELS:
-                raise ConfigurationError(
-                    f"signal '{printable(label, 20)}' is not simulated; nearest: {nearest(label, SIMULATED_LABELS)}"
-                )
+            known_label(label)
+        if not self.signals or len(set(self.signals)) < len(self.signals):
+            raise ConfigurationError("signals names each label once, and one at least")
+        _between(0.0, 60.0, tracking_dbhz=self.tracking_dbhz, use_dbhz=self.use_dbhz)
+        _between(0.0, 89.0, mask_deg=self.mask_deg)
+        _between(0.0, 60.0, correction_latency_s=self.correction_latency_s)
+        _between(0.1, 60.0, correction_interval_s=self.correction_interval_s)
 
 
 Sentence = Literal["GGA", "GNS", "RMC", "GLL", "GSA", "GSV", "GST", "VTG", "ZDA", "TXT"]
@@ -133,79 +166,36 @@ class StreamTruth:
     version: Literal["2.3", "3.01", "4.0", "4.11"] = "4.11"
     rate_hz: float = 1.0
     sentences: tuple[Sentence, ...] = ("GGA", "RMC", "VTG", "GST", "GLL", "ZDA", "GSA", "GSV")
+    """In the order in which they are sent."""
     satellites_every: int = 1
-    """Satellite sentences come with every n-th epoch."""
+    """GSV comes with every n-th epoch."""
     baud: int = 115_200
     latency_s: float = 0.05
     """From the instant of the fix to its first byte."""
+    jitter_s: float = 0.004
+    """Mean of what the host's reading adds to the time of arrival, at random."""
     minute_decimals: int = 7
     capped: bool = False
     """GGA counts no more than twelve satellites."""
     bit_error_rate: float = 0.0
     byte_loss_rate: float = 0.0
     binary_bytes_per_epoch: int = 0
+    """A binary message of so many bytes between the sentences of each epoch."""
     leap_second: bool = False
     """The first midnight of the run has a second 23:59:60 before it."""
     week_offset: int = 0
     """Weeks added to the date: -1024 for a receiver behind its rollover."""
 
     def __post_init__(self) -> None:
-        if not SLOWEST_HZ <= self.rate_hz <= FASTEST_HZ:
-            raise ConfigurationError(f"rate_hz = {self.rate_hz:g} lies between {SLOWEST_HZ} and {FASTEST_HZ:g}")
-        if not 300 <= self.baud <= 4_000_000:
-            raise ConfigurationError(f"baud = {self.baud} lies between 300 and 4000000")
-        if not 2 <= self.minute_decimals <= 9:
-            raise ConfigurationError("minute_decimals lies between 2 and 9")
-        if self.satellites_every < 1:
-            raise ConfigurationError("satellites_every is a whole number from 1 on")
-
-
-Kind = Literal[
-    "interference", "cable_loss", "blockage", "repeater", "no_corrections", "no_fix", "silence", "jump", "clock_jump",
-    "power_cycle", "bit_errors", "text"
-]  # fmt: skip
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Event:
-    """Something that happens, from ``at`` on for a time."""
-
-    kind: Kind
-    at_s: Duration = field(metadata={"key": "at"})
-    for_s: Duration = field(default=1e12, metadata={"key": "for"})
-    """Without: to the end."""
-    every_s: Duration = field(default=0.0, metadata={"key": "every"})
-    """Comes again after so long; 0: once."""
-    depth_db: float = 10.0
-    """Loss of C/N0, for interference, cable_loss, blockage."""
-    shape: Literal["step", "ramp"] = "step"
-    """Ramp: grows to its full depth over its duration."""
-    bands: tuple[str, ...] = ()
-    """Labels that interference falls on; none: all."""
-    azimuth_from_deg: float = 0.0
-    azimuth_to_deg: float = 360.0
-    elevation_deg: float = 90.0
-    """Of a blockage."""
-    east_m: float = 0.0
-    north_m: float = 0.0
-    up_m: float = 0.0
-    """Of a jump of the position."""
-    seconds: float = 0.0
-    """Of a clock jump."""
-    rate: float = 1e-4
-    """Of bit errors."""
-    text: str = ""
-
-    def active(self, time_s: float) -> float:
-        """Strength from 0 to 1 at a time of the run."""
-        since = time_s - self.at_s
-        if since < 0.0:
-            return 0.0
-        if self.every_s > 0.0:
-            since %= self.every_s
-        if since >= self.for_s:
-            return 0.0
-        return since / self.for_s if self.shape == "ramp" else 1.0
+        _between(SLOWEST_HZ, FASTEST_HZ, rate_hz=self.rate_hz)
+        _between(300, 4_000_000, baud=self.baud)
+        _between(2, 9, minute_decimals=self.minute_decimals)
+        _between(1, 3600, satellites_every=self.satellites_every)
+        _between(0.0, 1.0, bit_error_rate=self.bit_error_rate, byte_loss_rate=self.byte_loss_rate)
+        _between(0, 1023, binary_bytes_per_epoch=self.binary_bytes_per_epoch)
+        _between(0.0, 10.0, latency_s=self.latency_s, jitter_s=self.jitter_s)
+        if not self.sentences:
+            raise ConfigurationError("sentences names one kind at least")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -213,12 +203,13 @@ class Scenario:
     title: str
     teaches: str = ""
     name: str = ""
+    """Filled in when it is loaded: the name by which it was asked for."""
     healthy: bool = False
     """A site that should be accepted."""
     duration_s: Duration = field(default=3600.0, metadata={"key": "duration"})
     """Of a run where the user names none."""
     speed: float = 1.0
-    """How much faster than real time the demonstration runs."""
+    """How much faster than real time a demonstration should run."""
     site: SiteTruth
     antenna: Antenna = field(default_factory=Antenna)
     obstacle: tuple[Obstacle, ...] = ()
@@ -237,11 +228,12 @@ def load_scenario(name_or_path: str) -> Scenario:
     """A scenario by name, or from a TOML file. Raises ConfigurationError."""
     if name_or_path in scenario_names():
         text = (resources.files("gnssmon.simulation") / "scenarios" / f"{name_or_path}.toml").read_text("utf-8")
-        return load(Scenario, text, name=f"scenario '{name_or_path}'")
-    path = Path(name_or_path)
-    if not path.is_file():
+        scenario = load(Scenario, text, name=f"scenario '{name_or_path}'")
+    elif (path := Path(name_or_path)).is_file():
+        scenario = load(Scenario, path)
+    else:
         raise ConfigurationError(
             f"there is no scenario and no file '{printable(name_or_path, 100)}'; nearest scenario: "
             f"{nearest(name_or_path, scenario_names())}; all: gnssmon simulate --list"
         )
-    return load(Scenario, path)
+    return dataclasses.replace(scenario, name=scenario.name or Path(name_or_path).stem)

@@ -1,23 +1,28 @@
 """Truth → sentences, in the dialect of an NMEA version.
 
-Written by hand rather than by pynmea2, which takes many times longer: a day at 1 Hz is three million sentences. Tests
-read them back with pynmea2.
+Formatted here rather than built by pynmea2: a day of a dual-band receiver at 1 Hz is three million sentences, which
+take pynmea2 several minutes and this module half of one. Tests read them back with pynmea2.
 """
 
 from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from functools import reduce
-from operator import xor
 
 KNOTS = 3600.0 / 1852.0
-SYSTEM_ID = {"G": "1", "R": "2", "E": "3", "C": "4", "J": "5", "S": "1"}
-TALKER = {"G": "GP", "R": "GL", "E": "GA", "C": "GB", "J": "GQ", "S": "GP"}
-MODE = {0: "N", 1: "A", 2: "D", 4: "R", 5: "F"}
-MOST_USED = 12
+SYSTEM_ID = {"G": "1", "R": "2", "E": "3", "C": "4", "J": "5"}
+TALKER = {"G": "GP", "R": "GL", "E": "GA", "C": "GB", "J": "GQ"}
+MODE = {0: "N", 1: "A", 2: "D", 4: "R", 5: "F", 6: "E"}
+NUMBER_OFFSET = {"R": 64, "S": 13}
+"""From the number within the system (RINEX) to that in a sentence: slot + 64; PRN - 87, where PRN = number + 100."""
+SLOTS = 12
+"""Of a GSA."""
+GROUPS = 4
+"""Of a GSV."""
 NAMEABLE = {"2.3": "GS", "3.01": "GRS", "4.0": "GRS", "4.11": "GRECJS"}
 """Systems that a version's numbering can name."""
+PRECISE_DECIMALS = 6
+"""With so many decimals of a minute a receiver also gives heights to the millimetre and better."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -26,9 +31,10 @@ class Listed:
 
     letter: str
     number: int
-    """As sent: SBAS 33 to 64, GLONASS from 65 on."""
-    elevation: int
-    azimuth: int
+    """As sent: see NUMBER_OFFSET."""
+    elevation: int | None
+    """None while the receiver does not know where it stands."""
+    azimuth: int | None
     used: bool
     levels: tuple[int, ...]
     """By channel of its system; 0 not tracked."""
@@ -40,8 +46,8 @@ class Told:
 
     clock: str
     """``hhmmss.ss``; empty while no time is known."""
-    date: tuple[int, int, int]
-    """Day, month, year."""
+    date: tuple[int, int, int] | None
+    """Day, month, year; None while no time is known."""
     quality: int
     latitude_deg: float
     longitude_deg: float
@@ -56,28 +62,55 @@ class Told:
     speed_mps: float
     course_deg: float
     sigma_m: tuple[float, float, float]
+    """East, north, up."""
     satellites: tuple[Listed, ...]
+
+
+def checksum(body: bytes) -> int:
+    """XOR of all bytes: halves of the number that the bytes are, folded onto each other until one byte is left."""
+    value, bits = int.from_bytes(body, "little"), 8
+    while bits < 8 * len(body):
+        bits *= 2
+    while bits > 8:
+        bits //= 2
+        value = (value >> bits) ^ (value & ((1 << bits) - 1))
+    return value
 
 
 def sentence(body: str) -> str:
     """The body with start character, checksum and line end."""
-    return f"${body}*{reduce(xor, body.encode('ascii')):02X}\r\n"
+    return f"${body}*{checksum(body.encode('ascii')):02X}\r\n"
 
 
 class Writer:
     """Writes epochs in one dialect."""
 
-    def __init__(self, version: str, *, minute_decimals: int, signals: dict[str, tuple[str, ...]]) -> None:
-        """``signals``: signal ids of each system's channels, by letter."""
+    def __init__(self, version: str, *, minute_decimals: int, signals: tuple[tuple[str, str], ...]) -> None:
+        """``signals``: system letter and signal id of each channel, in the order of ``Listed.levels``."""
         self._modern = version == "4.11"
         self._nameable = NAMEABLE[version]
         self._decimals = minute_decimals
-        self._signals = signals
-        self._many = sum(letter in self._nameable for letter in signals if letter != "S") > 1
-        self._talker = "GN" if self._many else "GP"
+        self._systems = [x for x in "GRECJ" if x in self._nameable and any(letter == x for letter, _ in signals)]
+        self._talker = "GN" if len(self._systems) > 1 or "G" not in self._systems else "GP"
+        self._sets = self._signal_sets(signals)
+
+    def _signal_sets(self, signals: tuple[tuple[str, str], ...]) -> list[tuple[str, str, dict[str, int], bool]]:
+        """Talker, signal id, channel by system letter, and whether it is the system's first, of each set of GSV."""
+        places: dict[str, list[str]] = {}
+        for letter, signal_id in signals:
+            places.setdefault(letter, []).append(signal_id)
+        sets = []
+        for letter in self._systems:
+            for i, signal_id in enumerate(places[letter] if self._modern else places[letter][:1]):
+                channels = {letter: i}
+                # Augmentation satellites stand with the GPS ones, as the standard has it.
+                if letter == "G" and signal_id in places.get("S", ()):
+                    channels["S"] = places["S"].index(signal_id)
+                sets.append((TALKER[letter], f",{signal_id}" if self._modern else "", channels, i == 0))
+        return sets
 
     def epoch(self, told: Told, kinds: tuple[str, ...], *, text: str = "") -> list[str]:
-        """The sentences of an epoch, in the order of ``kinds``."""
+        """The sentences of an epoch, in the order of ``kinds``; ``text`` in a TXT."""
         out: list[str] = []
         for kind in kinds:
             if kind == "GSV":
@@ -88,7 +121,7 @@ class Writer:
                 if text:
                     out.append(sentence(f"{self._talker}TXT,01,01,01,{text}"))
             else:
-                out.append(sentence(getattr(self, f"_{kind.lower()}")(told)))
+                out.append(sentence(self._talker + kind + "," + getattr(self, f"_{kind.lower()}")(told)))
         return out
 
     def _place(self, told: Told) -> str:
@@ -96,110 +129,92 @@ class Writer:
             return ",,,"
         latitude = _minutes(abs(told.latitude_deg), 2, self._decimals)
         longitude = _minutes(abs(told.longitude_deg), 3, self._decimals)
-        return (
-            f"{latitude},{'S' if told.latitude_deg < 0 else 'N'},{longitude},{'W' if told.longitude_deg < 0 else 'E'}"
-        )
+        south, west = "S" if told.latitude_deg < 0 else "N", "W" if told.longitude_deg < 0 else "E"
+        return f"{latitude},{south},{longitude},{west}"
 
-    def _corrections(self, told: Told) -> str:
-        return "," if math.isnan(told.age_s) else f"{told.age_s:.1f},{told.station:04d}"
+    def _heights(self, told: Told) -> tuple[str, str]:
+        if not told.quality:
+            return "", ""
+        if self._decimals >= PRECISE_DECIMALS:
+            return f"{told.altitude_m:.4f}", f"{told.separation_m:.3f}"
+        return f"{told.altitude_m:.1f}", f"{told.separation_m:.1f}"
 
     def _gga(self, told: Told) -> str:
-        head = f"{self._talker}GGA,{told.clock},{self._place(told)},{told.quality},{told.used:02d}"
-        if not told.quality:
-            return f"{head},99.99,,,,,,"
-        height = (
-            f"{told.altitude_m:.4f},M,{told.separation_m:.3f},M"
-            if self._decimals >= 6
-            else (f"{told.altitude_m:.1f},M,{told.separation_m:.1f},M")
-        )
-        return f"{head},{_dop(told.hdop)},{height},{self._corrections(told)}"
+        altitude, separation = self._heights(told)
+        head = f"{told.clock},{self._place(told)},{told.quality},{told.used:02d},{_dop(told.hdop)}"
+        return f"{head},{altitude},M,{separation},M,{_corrections(told)}"
 
     def _gns(self, told: Told) -> str:
-        letters = "".join(
-            MODE[told.quality] if any(s.letter == letter and s.used for s in told.satellites) else "N"
-            for letter in ("GREC" if self._modern else "GR")
-        )
-        height = f"{told.altitude_m:.4f},{told.separation_m:.3f}" if told.quality else ","
-        body = (
-            f"{self._talker}GNS,{told.clock},{self._place(told)},{letters},{told.used:02d},{_dop(told.hdop)},{height}"
-        )
-        return f"{body},{self._corrections(told)}" + (",V" if self._modern else "")
+        using = {s.letter for s in told.satellites if s.used}
+        systems = "GREC" + ("J" if "J" in self._systems else "") if self._modern else "GR"
+        letters = "".join(MODE[told.quality] if letter in using else "N" for letter in systems)
+        altitude, separation = self._heights(told)
+        head = f"{told.clock},{self._place(told)},{letters},{told.used:02d},{_dop(told.hdop)}"
+        return f"{head},{altitude},{separation},{_corrections(told)}" + (",V" if self._modern else "")
 
     def _rmc(self, told: Told) -> str:
-        day, month, year = told.date
         status = "A" if told.quality else "V"
         motion = f"{told.speed_mps * KNOTS:.3f},{_course(told)}" if told.quality else ","
-        body = f"{self._talker}RMC,{told.clock},{status},{self._place(told)},{motion}"
-        return f"{body},{day:02d}{month:02d}{year % 100:02d},,," + MODE[told.quality] + (",V" if self._modern else "")
+        date = "" if told.date is None else f"{told.date[0]:02d}{told.date[1]:02d}{told.date[2] % 100:02d}"
+        tail = f",,,{MODE[told.quality]}" + (",V" if self._modern else "")
+        return f"{told.clock},{status},{self._place(told)},{motion},{date}{tail}"
 
     def _gll(self, told: Told) -> str:
-        return f"{self._talker}GLL,{self._place(told)},{told.clock},{'A' if told.quality else 'V'},{MODE[told.quality]}"
+        return f"{self._place(told)},{told.clock},{'A' if told.quality else 'V'},{MODE[told.quality]}"
 
     def _vtg(self, told: Told) -> str:
         if not told.quality:
-            return f"{self._talker}VTG,,T,,M,,N,,K,N"
-        knots = told.speed_mps * KNOTS
-        return f"{self._talker}VTG,{_course(told)},T,,M,{knots:.3f},N,{told.speed_mps * 3.6:.3f},K,{MODE[told.quality]}"
+            return ",T,,M,,N,,K,N"
+        return f"{_course(told)},T,,M,{told.speed_mps * KNOTS:.3f},N,{told.speed_mps * 3.6:.3f},K,{MODE[told.quality]}"
 
     def _gst(self, told: Told) -> str:
-        if not told.quality:
-            return f"{self._talker}GST,{told.clock},,,,,,,"
+        if not told.quality or not math.isfinite(told.hdop):
+            return f"{told.clock},,,,,,,"
         east, north, up = told.sigma_m
-        return f"{self._talker}GST,{told.clock},{north * 1.5:.3f},,,,{north:.3f},{east:.3f},{up:.3f}"
+        ranging = math.hypot(east, north) / told.hdop
+        return f"{told.clock},{ranging:.3f},,,,{north:.3f},{east:.3f},{up:.3f}"
 
     def _zda(self, told: Told) -> str:
+        if told.date is None:
+            return ",,,,,"
         day, month, year = told.date
-        return f"{self._talker}ZDA,{told.clock},{day:02d},{month:02d},{year:04d},00,00"
+        return f"{told.clock},{day:02d},{month:02d},{year:04d},00,00"
 
     def _gsa(self, told: Told) -> list[str]:
         fix = 3 if told.quality else 1
         dops = f"{_dop(told.pdop)},{_dop(told.hdop)},{_dop(told.vdop)}"
         out = []
-        if not self._modern:
-            numbers = [f"{s.number:02d}" for s in told.satellites if s.used and s.letter in self._nameable]
-            groups = [numbers[i : i + MOST_USED] for i in range(0, max(len(numbers), 1), MOST_USED)]
-            return [sentence(f"{self._talker}GSA,A,{fix},{_slots(group)},{dops}") for group in groups]
-        for letter in self._signals:
-            if letter == "S":
-                continue
-            # Augmentation satellites stand with the GPS ones, as the standard has it.
-            numbers = [
-                f"{s.number:02d}"
-                for s in told.satellites
-                if s.used and (s.letter == letter or (letter == "G" and s.letter == "S"))
-            ]
-            for i in range(0, max(len(numbers), 1), MOST_USED):
-                group = numbers[i : i + MOST_USED]
-                out.append(sentence(f"{self._talker}GSA,A,{fix},{_slots(group)},{dops},{SYSTEM_ID[letter]}"))
+        for letter in self._systems:
+            numbers = [f"{s.number:02d}" for s in told.satellites if s.used and s.letter == letter]
+            tail = f",{SYSTEM_ID[letter]}" if self._modern else ""
+            groups = (numbers[i : i + SLOTS] for i in range(0, max(len(numbers), 1), SLOTS))
+            out += [sentence(f"{self._talker}GSA,A,{fix},{_slots(group)},{dops}{tail}") for group in groups]
         return out
 
     def _gsv(self, told: Told) -> list[str]:
-        out = []
-        for letter, ids in self._signals.items():
-            if letter not in self._nameable:
-                continue
-            listed = [s for s in told.satellites if s.letter == letter]
-            for channel, signal_id in enumerate(ids if self._modern else ids[:1]):
+        out: list[str] = []
+        for talker, tail, channels, first in self._sets:
+            groups = [
+                _group(s, level)
+                for s in told.satellites
+                if s.letter in channels
                 # Untracked satellites stand in the first signal's set only.
-                shown = [s for s in listed if channel == 0 or s.levels[channel]]
-                if not shown and channel:
-                    continue
-                out += self._set(TALKER[letter], shown, channel, f",{signal_id}" if self._modern else "")
+                and ((level := s.levels[channels[s.letter]]) or (first and s.elevation is not None))
+            ]
+            if not groups and not first:
+                continue
+            total = max(1, -(-len(groups) // GROUPS))
+            for part in range(total):
+                shown = "".join(groups[GROUPS * part : GROUPS * (part + 1)])
+                out.append(sentence(f"{talker}GSV,{total},{part + 1},{len(groups):02d}{shown}{tail}"))
         return out
 
-    def _set(self, talker: str, shown: list[Listed], channel: int, tail: str) -> list[str]:
-        total = max(1, -(-len(shown) // 4))
-        out = []
-        for part in range(total):
-            groups = ",".join(
-                f"{s.number:02d},{s.elevation:02d},{s.azimuth:03d},{s.levels[channel] or '':02}"
-                if s.levels[channel]
-                else f"{s.number:02d},{s.elevation:02d},{s.azimuth:03d},"
-                for s in shown[4 * part : 4 * part + 4]
-            )
-            comma = "," if groups else ""
-            out.append(sentence(f"{talker}GSV,{total},{part + 1},{len(shown):02d}{comma}{groups}{tail}"))
-        return out
+
+def _group(satellite: Listed, level: int) -> str:
+    strength = f"{level:02d}" if level else ""
+    if satellite.elevation is None:
+        return f",{satellite.number:02d},,,{strength}"
+    return f",{satellite.number:02d},{satellite.elevation:02d},{satellite.azimuth:03d},{strength}"
 
 
 def _minutes(angle_deg: float, width: int, decimals: int) -> str:
@@ -208,6 +223,10 @@ def _minutes(angle_deg: float, width: int, decimals: int) -> str:
     minutes, fraction = divmod(units, 10**decimals)
     degrees, minutes = divmod(minutes, 60)
     return f"{degrees:0{width}d}{minutes:02d}.{fraction:0{decimals}d}"
+
+
+def _corrections(told: Told) -> str:
+    return "," if math.isnan(told.age_s) else f"{told.age_s:.1f},{told.station:04d}"
 
 
 def _dop(value: float) -> str:
@@ -219,4 +238,4 @@ def _course(told: Told) -> str:
 
 
 def _slots(numbers: list[str]) -> str:
-    return ",".join(numbers + [""] * (MOST_USED - len(numbers)))
+    return ",".join(numbers + [""] * (SLOTS - len(numbers)))

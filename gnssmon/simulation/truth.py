@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections import defaultdict
+from collections import Counter, defaultdict
+from dataclasses import asdict, dataclass, field
 from datetime import UTC, datetime
 from typing import Any
 
@@ -10,143 +11,295 @@ import numpy as np
 import numpy.typing as npt
 
 from gnssmon.simulation.line import BITS_PER_BYTE, Losses
-from gnssmon.simulation.position import FAST_S, SIZES, SLOW_S, UP_FACTOR
+from gnssmon.simulation.position import ERRORS, USUAL_DOP
 from gnssmon.simulation.scenario import Scenario
+from gnssmon.simulation.signals import Channel, overhead_dbhz
+from gnssmon.simulation.viewing import geocentric
 
-QUALITY_NAMES = {0: "none", 1: "autonomous", 2: "differential", 4: "rtk_fixed", 5: "rtk_float"}
+Floats = npt.NDArray[np.float64]
+
+SCHEMA = "gnssmon.truth/1"
+QUALITY_NAMES = {
+    0: "none", 1: "autonomous", 2: "differential", 4: "rtk_fixed", 5: "rtk_float", 6: "estimated"
+}  # fmt: skip
+MOST_CHANGES = 10_000
+"""Of fix quality, and of gaps: a stream that flickers for days should not fill the disk."""
+MOST_MINUTES = 14_400
+"""Ten days of minute rows; what comes later is added to one last row that is not told."""
+
+
+@dataclass(slots=True)
+class _Minute:
+    epochs: int = 0
+    fixes: int = 0
+    used: int = 0
+    pdop: float = 0.0
+    levels: float = 0.0
+    count: int = 0
+
+
+@dataclass(slots=True)
+class _Sums:
+    """Of the epochs of one fix quality."""
+
+    epochs: int = 0
+    error_m: Floats = field(default_factory=lambda: np.zeros(3))
+    square_m2: Floats = field(default_factory=lambda: np.zeros((3, 3)))
+
+    def facts(self) -> dict[str, Any]:
+        if self.epochs < 2:
+            return {"epochs": self.epochs, "mean_m": None, "std_m": None}
+        mean = self.error_m / self.epochs
+        spread = (self.square_m2 / self.epochs - np.outer(mean, mean)) * self.epochs / (self.epochs - 1)
+        return {
+            "epochs": self.epochs,
+            "mean_m": mean.tolist(),
+            "std_m": np.sqrt(np.maximum(np.diag(spread), 0.0)).tolist(),
+        }
 
 
 class Truth:
     """Adds up as epochs are made; ``facts`` gives one JSON object at the end."""
 
-    def __init__(self, scenario: Scenario, seed: int) -> None:
-        self._scenario, self._seed = scenario, seed
-        self._epochs = 0
-        self._silent = 0
-        self._qualities: dict[int, int] = defaultdict(int)
-        self._levels: dict[str, list[float]] = defaultdict(lambda: [0.0, 0.0])
-        self._error = np.zeros(3)
-        self._square = np.zeros((3, 3))
-        self._fixes = 0
+    def __init__(self, scenario: Scenario, seed: int, channels: tuple[Channel, ...]) -> None:
+        self._scenario, self._seed, self._channels = scenario, seed, channels
+        self._by_quality: dict[int, _Sums] = defaultdict(_Sums)
+        self._all = _Sums()
+        self._sent = self._due = 0
+        self._level_sum, self._level_count = np.zeros(len(channels)), np.zeros(len(channels), dtype=np.int64)
         self._dops: list[tuple[float, float, float]] = []
-        self._used: list[int] = []
+        self._dop_epochs: list[int] = []
+        """Runs of equal dilutions: geometry is computed once in ten seconds."""
+        self._used: Counter[int] = Counter()
+        self._ages: Counter[float] = Counter()
         self._changes: list[tuple[float, int]] = []
+        self._gaps: list[list[float]] = []
+        self._silent = False
+        self._minutes: dict[int, _Minute] = defaultdict(_Minute)
         self._last_s = 0.0
 
     def epoch(
-        self, time_s: float, quality: int, error_m: npt.NDArray[np.float64], used: int, dops: tuple[float, ...]
+        self, time_s: float, quality: int, age_s: float, *, error_m: Floats, used: int, dops: tuple[float, float, float]
     ) -> None:
-        """An epoch that was sent."""
-        self._epochs += 1
-        self._last_s = time_s
-        if not self._changes or self._changes[-1][1] != quality:
+        """An epoch that was sent; ``dops``: EDOP, NDOP, VDOP; ``error_m``: reported minus true, east, north, up."""
+        self._sent += 1
+        self._due += 1
+        self._last_s, self._silent = time_s, False
+        if (not self._changes or self._changes[-1][1] != quality) and len(self._changes) < MOST_CHANGES:
             self._changes.append((time_s, quality))
-        self._qualities[quality] += 1
-        if quality:
-            self._fixes += 1
-            self._error += error_m
-            self._square += np.outer(error_m, error_m)
-            self._used.append(used)
-            self._dops.append((dops[0], dops[1], dops[2]))
+        sums = self._by_quality[quality]
+        minute = self._minute(time_s)
+        minute.epochs += 1
+        sums.epochs += 1
+        if not quality:
+            return
+        square_m2 = np.outer(error_m, error_m)
+        self._all.epochs += 1
+        for s in (sums, self._all):
+            s.error_m += error_m
+            s.square_m2 += square_m2
+        self._used[used] += 1
+        if np.isfinite(age_s):
+            self._ages[round(age_s, 3)] += 1
+        minute.fixes += 1
+        minute.used += used
+        if not np.isfinite(dops[0]):
+            return
+        if self._dops and self._dops[-1] == dops:
+            self._dop_epochs[-1] += 1
+        else:
+            self._dops.append(dops)
+            self._dop_epochs.append(1)
+            minute.pdop = max(minute.pdop, float(np.linalg.norm(dops)))
 
-    def silent(self) -> None:
-        """An epoch that was not sent."""
-        self._silent += 1
+    def silent(self, time_s: float) -> None:
+        """An epoch that was due but not sent."""
+        self._due += 1
+        self._last_s = time_s
+        if not self._silent and len(self._gaps) < MOST_CHANGES:
+            self._gaps.append([time_s, time_s, 0])
+        self._silent = True
+        if self._gaps:
+            self._gaps[-1][1] = time_s
+            self._gaps[-1][2] += 1
 
-    def level(self, label: str, total: float, count: int) -> None:
-        """Levels sent for a signal."""
-        self._levels[label][0] += total
-        self._levels[label][1] += count
+    def levels(self, time_s: float, total: Floats, count: npt.NDArray[np.int64]) -> None:
+        """Levels written in an epoch, by channel: their sum in whole dB-Hz, and how many."""
+        self._level_sum += total
+        self._level_count += count
+        minute = self._minute(time_s)
+        minute.levels += float(total.sum())
+        minute.count += int(count.sum())
+
+    def _minute(self, time_s: float) -> _Minute:
+        return self._minutes[min(int(time_s // 60.0), MOST_MINUTES)]
 
     def facts(self, losses: Losses) -> dict[str, Any]:
-        """Everything, ready for JSON."""
+        """Everything, ready for JSON; what is not known is null."""
         scenario = self._scenario
-        site, stream, antenna = scenario.site, scenario.stream, scenario.antenna
-        duration_s = max(self._last_s, 1e-9)
-        mean = self._error / self._fixes if self._fixes else np.full(3, np.nan)
-        spread = self._square / self._fixes - np.outer(mean, mean) if self._fixes else np.full((3, 3), np.nan)
-        scale = self._fixes / (self._fixes - 1) if self._fixes > 1 else np.nan
-        dops = np.median(np.array(self._dops), axis=0) if self._dops else np.full(3, np.nan)
+        site, receiver = scenario.site, scenario.receiver
+        point = (site.latitude_deg, site.longitude_deg, site.height_m + site.antenna_height_m)
         facts: dict[str, Any] = {
-            "schema": "gnssmon.truth/1",
-            "scenario": scenario.name or scenario.title,
+            "schema": SCHEMA,
+            "simulated": True,
+            "scenario": scenario.name,
+            "title": scenario.title,
+            "healthy": scenario.healthy,
             "seed": self._seed,
-            "start_utc": _iso(stream.start_ms / 1000.0),
+            "start_utc": self._utc(0.0),
             "duration_s": self._last_s,
-            "mark": [site.latitude_deg, site.longitude_deg, site.height_m],
-            "antenna_height_m": site.antenna_height_m,
-            "reported_point": [site.latitude_deg, site.longitude_deg, site.height_m + site.antenna_height_m],
-            "bias_m": [scenario.receiver.bias_east_m, scenario.receiver.bias_north_m, scenario.receiver.bias_up_m],
-            "epochs_due": self._epochs + self._silent,
-            "epochs_sent": self._epochs,
-            "shares": {
-                name: self._qualities.get(code, 0) / self._epochs if self._epochs else None
-                for code, name in QUALITY_NAMES.items()
+            "interval_s": 1.0 / scenario.stream.rate_hz,
+            "site": {
+                "mark": [site.latitude_deg, site.longitude_deg, site.height_m],
+                "antenna_height_m": site.antenna_height_m,
+                "reported_point": list(point),
+                "reported_point_ecef_m": geocentric(*point).tolist(),
+                "separation_m": site.separation_m,
+                "speed_mps": site.speed_mps,
+                "course_deg": site.course_deg,
+                "bias_m": [receiver.bias_east_m, receiver.bias_north_m, receiver.bias_up_m],
             },
-            "quality_changes": [
-                {"utc": _iso(stream.start_ms / 1000.0 + at_s), "at_s": at_s, "quality": quality}
-                for at_s, quality in self._changes[:10_000]
-            ],
-            "position_error_mean_m": mean.tolist(),
-            "position_error_std_m": np.sqrt(np.maximum(np.diag(spread) * scale, 0.0)).tolist(),
-            "error_model": {
-                QUALITY_NAMES[code]: {
-                    "white_m": size.white_m,
-                    "fast_m": size.fast_m,
-                    "fast_s": FAST_S.get(code, FAST_S[1]),
-                    "slow_m": size.slow_m,
-                    "slow_s": SLOW_S.get(code, SLOW_S[1]),
-                    "up_factor": UP_FACTOR,
-                }
-                for code, size in SIZES.items()
-            },
-            "satellites_used_mean": float(np.mean(self._used)) if self._used else None,
-            "pdop_median": dops[0],
-            "hdop_median": dops[1],
-            "vdop_median": dops[2],
-            "cn0_mean_dbhz": {label: total / count for label, (total, count) in sorted(self._levels.items()) if count},
-            "cn0_count": {label: int(count) for label, (_, count) in sorted(self._levels.items())},
-            "line": {
-                "baud": stream.baud,
-                "offered_load": losses.offered_bytes
-                * BITS_PER_BYTE
-                / stream.baud
-                / (duration_s + 1.0 / stream.rate_hz),
-                "load": losses.sent_bytes * BITS_PER_BYTE / stream.baud / (duration_s + 1.0 / stream.rate_hz),
-                "sentences": losses.sentences,
-                "missing_sentences": losses.missing_sentences,
-                "cut_sentences": losses.cut_sentences,
-                "damaged_bits": losses.damaged_bits,
-                "lost_bytes": losses.lost_bytes,
-                "binary_bytes": losses.binary_bytes,
-                "longest_delay_s": losses.longest_delay_s,
-            },
-            "reflector": None
-            if not antenna.reflector_height_m
-            else {
-                "height_m": antenna.reflector_height_m,
-                "fringe_period_sin_elevation_l1": 0.190293672798 / (2.0 * antenna.reflector_height_m),
-            },
-            "events": [self._event(event) for event in scenario.event],
+            "epochs": {"due": self._due, "sent": self._sent, "gaps": self._gap_facts()},
+            "fix": self._fix_facts(),
+            "position_error": self._error_facts(),
+            "satellites": self._satellite_facts(),
+            "cn0": self._level_facts(),
+            "line": self._line_facts(losses),
+            "obstacles": [asdict(obstacle) for obstacle in scenario.obstacle],
+            "reflector": self._reflector_facts(),
+            "events": [self._event_facts(i) for i in range(len(scenario.event))],
+            "minutes": self._minute_facts(),
         }
         told: dict[str, Any] = _without_nan(facts)
         return told
 
-    def _event(self, event: Any) -> dict[str, Any]:
-        start_s = self._scenario.stream.start_ms / 1000.0
-        end_s = min(event.at_s + event.for_s, self._last_s)
-        facts = {
-            name: getattr(event, name)
-            for name in ("kind", "at_s", "for_s", "every_s", "depth_db", "shape", "bands", "azimuth_from_deg")
-        } | {
-            name: getattr(event, name)
-            for name in ("azimuth_to_deg", "elevation_deg", "east_m", "north_m", "up_m", "seconds", "rate", "text")
+    def _utc(self, time_s: float) -> str:
+        when = datetime.fromtimestamp(self._scenario.stream.start_ms / 1000.0 + time_s, UTC)
+        return when.isoformat(timespec="milliseconds").replace("+00:00", "Z")
+
+    def _gap_facts(self) -> list[dict[str, Any]]:
+        return [
+            {"from_utc": self._utc(first_s), "to_utc": self._utc(last_s), "from_s": first_s, "epochs": int(missing)}
+            for first_s, last_s, missing in self._gaps
+        ]
+
+    def _fix_facts(self) -> dict[str, Any]:
+        sent = max(self._sent, 1)
+        return {
+            "share": {name: self._by_quality[q].epochs / sent for q, name in QUALITY_NAMES.items()},
+            "changes": [{"utc": self._utc(at_s), "at_s": at_s, "quality": quality} for at_s, quality in self._changes],
+            "correction_age_median_s": _median(np.array(list(self._ages)), np.array(list(self._ages.values()))),
+            "correction_age_max_s": max(self._ages, default=None),
         }
-        return {"from_utc": _iso(start_s + event.at_s), "to_utc": _iso(start_s + end_s), **facts}
+
+    def _error_facts(self) -> dict[str, Any]:
+        by_quality = {
+            name: self._by_quality[q] for q, name in QUALITY_NAMES.items() if q and self._by_quality[q].epochs
+        }
+        return {
+            "axes": ["east", "north", "up"],
+            "realised": self._all.facts(),
+            "realised_by_quality": {name: sums.facts() for name, sums in by_quality.items()},
+            "model_at_usual_dop": {
+                QUALITY_NAMES[q]: asdict(size) | {"std_m": size.std_m() * self._scenario.receiver.error_scale}
+                for q, size in ERRORS.items()
+                if QUALITY_NAMES[q] in by_quality
+            },
+            "usual_dop": USUAL_DOP,
+        }
+
+    def _satellite_facts(self) -> dict[str, Any]:
+        facts: dict[str, Any] = {
+            "used_mean": sum(n * k for n, k in self._used.items()) / self._used.total() if self._used else None,
+            "used_min": min(self._used, default=None),
+        }
+        if not self._dops:
+            return facts | {f"{name}_median": None for name in ("edop", "ndop", "hdop", "vdop", "pdop")}
+        dops, epochs = np.array(self._dops), np.array(self._dop_epochs)
+        series = {
+            "edop": dops[:, 0],
+            "ndop": dops[:, 1],
+            "hdop": np.hypot(dops[:, 0], dops[:, 1]),
+            "vdop": dops[:, 2],
+            "pdop": np.linalg.norm(dops, axis=1),
+        }
+        medians = {f"{name}_median": _median(values, epochs) for name, values in series.items()}
+        return facts | medians | {"pdop_max": float(series["pdop"].max()), "hdop_max": float(series["hdop"].max())}
+
+    def _level_facts(self) -> dict[str, Any]:
+        count = np.maximum(self._level_count, 1)
+        total = int(self._level_count.sum())
+        return {
+            "overhead_dbhz": overhead_dbhz(self._scenario),
+            "mean_dbhz": float(self._level_sum.sum() / total) if total else None,
+            "by_signal": {
+                channel.label: {
+                    "mean_dbhz": float(self._level_sum[i] / count[i]) if self._level_count[i] else None,
+                    "count": int(self._level_count[i]),
+                    "carrier_mhz": channel.carrier_mhz,
+                }
+                for i, channel in enumerate(self._channels)
+            },
+        }
+
+    def _line_facts(self, losses: Losses) -> dict[str, Any]:
+        stream = self._scenario.stream
+        carried = stream.baud / BITS_PER_BYTE * (self._last_s + 1.0 / stream.rate_hz)
+        return {
+            "baud": stream.baud,
+            "load_offered": losses.offered_bytes / carried,
+            "load": losses.sent_bytes / carried,
+        } | asdict(losses)
+
+    def _reflector_facts(self) -> dict[str, Any] | None:
+        antenna = self._scenario.antenna
+        if not antenna.reflector_height_m and not antenna.wall_distance_m:
+            return None
+        middle = np.zeros(1, dtype=np.int64)
+        periods = {
+            channel.label: float(channel.wavelength_m(middle)[0]) / (2.0 * antenna.reflector_height_m)
+            for channel in self._channels
+            if antenna.reflector_height_m
+        }
+        return {
+            "height_m": antenna.reflector_height_m or None,
+            "strength": antenna.reflector_strength,
+            "period_sin_elevation": periods,
+            "wall_distance_m": antenna.wall_distance_m or None,
+            "wall_azimuth_deg": antenna.wall_azimuth_deg,
+            "wall_strength": antenna.wall_strength,
+        }
+
+    def _event_facts(self, place: int) -> dict[str, Any]:
+        event = self._scenario.event[place]
+        times = [
+            {"from_utc": self._utc(begin_s), "to_utc": self._utc(end_s), "from_s": begin_s, "to_s": end_s}
+            for begin_s, end_s in event.occurrences(self._last_s)
+        ]
+        return asdict(event) | {"times": times}
+
+    def _minute_facts(self) -> list[dict[str, Any]]:
+        return [
+            {
+                "utc": self._utc(60.0 * number),
+                "epochs": minute.epochs,
+                "fixes": minute.fixes,
+                "used_mean": minute.used / minute.fixes if minute.fixes else None,
+                "pdop_max": minute.pdop or None,
+                "cn0_mean_dbhz": minute.levels / minute.count if minute.count else None,
+            }
+            for number, minute in sorted(self._minutes.items())[:MOST_MINUTES]
+        ]
 
 
-def _iso(utc_s: float) -> str:
-    return datetime.fromtimestamp(utc_s, UTC).isoformat(timespec="milliseconds").replace("+00:00", "Z")
+def _median(values: Floats, count: npt.NDArray[np.int64]) -> float | None:
+    """Of values that came so many times each."""
+    if not len(values):
+        return None
+    order = np.argsort(values)
+    total = np.cumsum(count[order])
+    middle = np.searchsorted(total, [(total[-1] + 1) // 2, total[-1] // 2 + 1])
+    return float(values[order][middle].mean())
 
 
 def _without_nan(value: Any) -> Any:
