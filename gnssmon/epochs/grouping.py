@@ -133,6 +133,8 @@ class Grouping:
         """
         if self._open is None or self._open.from_clock or not len(timed):
             return None
+        if self._before is not None and self._before.time_ms >= self._open.time_ms:
+            return None
         step_ms = np.diff(time, prepend=self._open.time_ms)
         opens = np.flatnonzero(step_ms)
         if not len(opens) or clock[opens].any() or int(step_ms[opens].min()) < TOLERANCE_MS:
