@@ -38,6 +38,27 @@ UNSEEN_SPELL_S = 10.0
 Common practice, no source."""
 
 
+class _Waiting:
+    """Time of the stream until a state is first reached; a clock that is set back on the way does not shorten it."""
+
+    def __init__(self) -> None:
+        self.waited_ms = 0
+        self.reached = False
+
+    def update(self, step_ms: npt.NDArray[np.int64], there: npt.NDArray[np.bool_]) -> None:
+        """``step_ms``: from the epoch before to each; ``there``: whether the state holds; shapes (n,)."""
+        if not self.reached:
+            self.reached = bool(there.any())
+            upto = int(there.argmax()) + 1 if self.reached else len(there)
+            self.waited_ms += int(np.maximum(step_ms[:upto], 0).sum())
+
+    def merge(self, other: Self, *, between_ms: int) -> None:
+        """``between_ms``: from this part's last epoch to the other's first."""
+        if not self.reached:
+            self.waited_ms += max(between_ms, 0) + other.waited_ms
+            self.reached = other.reached
+
+
 class Fix:
     """Every counted epoch's quality as runs; satellites, HDOP and age by the minute."""
 
@@ -90,6 +111,8 @@ class Fix:
     def __init__(self, site: Site) -> None:
         self._spells = Spells()
         self._first_ms: int | None = None
+        self._last_ms: int | None = None
+        self._waiting = {"time_to_first_fix_s": _Waiting(), "time_to_fixed_s": _Waiting()}
         self._minutes = Minutes(
             sums=("used", "used_count", "hdop", "hdop_count", *(f"quality_{q}" for q in range(9))), peaks=("age_s",)
         )
@@ -102,7 +125,11 @@ class Fix:
         self._answers.clear()
         if self._first_ms is None:
             self._first_ms = int(batch.axis_ms[0])
+        step_ms = np.diff(batch.axis_ms, prepend=batch.axis_ms[0] if self._last_ms is None else self._last_ms)
+        self._last_ms = int(batch.axis_ms[-1])
         counted = batch.counted
+        self._waiting["time_to_first_fix_s"].update(step_ms, counted & (batch.quality > 0))
+        self._waiting["time_to_fixed_s"].update(step_ms, counted & (batch.quality == RTK_FIXED))
         axis_ms, quality = batch.axis_ms[counted], batch.quality[counted].astype(np.int64)
         self._spells.update(axis_ms, quality)
         used, hdop = batch.satellites_used[counted].astype(np.float64), batch.hdop[counted]
@@ -122,8 +149,12 @@ class Fix:
     def merge(self, other: Self) -> None:
         """Take in what ``other`` knows of a later part of the stream."""
         self._answers.clear()
-        if self._first_ms is None:
-            self._first_ms = other._first_ms
+        if other._first_ms is not None:
+            between_ms = 0 if self._last_ms is None else other._first_ms - self._last_ms
+            for name, waiting in self._waiting.items():
+                waiting.merge(other._waiting[name], between_ms=between_ms)
+            self._first_ms = other._first_ms if self._first_ms is None else self._first_ms
+            self._last_ms = other._last_ms
         self._spells.merge(other._spells)
         self._minutes.merge(other._minutes)
 
@@ -154,7 +185,9 @@ class Fix:
         start_ms = self._first_ms if span.from_ms is None else max(self._first_ms, span.from_ms)
         start_ms = min(start_ms, int(runs.first_ms[0]))
         for name, reached in (("time_to_first_fix_s", runs.state > 0), ("time_to_fixed_s", runs.state == RTK_FIXED)):
-            if reached.any():
+            if span == EVERYTHING and self._waiting[name].reached:
+                answers[f"fix.{name}"] = exact(self._waiting[name].waited_ms / 1000.0)
+            elif reached.any():
                 answers[f"fix.{name}"] = exact((int(runs.first_ms[reached.argmax()]) - start_ms) / 1000.0)
         fixed = runs.state == RTK_FIXED
         answers["fix.fixed_losses"] = exact(float(np.count_nonzero(fixed[:-1] & ~fixed[1:])), int(runs.count.sum()))
