@@ -61,8 +61,11 @@ def command(
         raise click.UsageError("--to, --listen and --pty exclude each other")
     rate = _rate(pace, live=listen is not None or pty)
     duration_s = None if duration is None else utc.parse_duration_s(duration)
-    run = Generator(load_scenario(scenario), duration_s=duration_s, seed=seed)
-    with session.stop_on_signals() as stop, _output(to, listen, pty, stop.is_set) as write:
+    chosen = load_scenario(scenario)
+    run = Generator(chosen, duration_s=duration_s, seed=seed)
+    if truth is not None:
+        _keep(truth, {})  # a path that cannot be written is better known before the run than behind it
+    with session.stop_on_signals() as stop, _output(to, listen, pty, chosen.stream.baud, stop.is_set) as write:
         _send(run, write, rate, stop.is_set)
         stopped = stop.is_set()
     if truth is not None:
@@ -100,31 +103,36 @@ def _send(run: Generator, write: Write, rate: float, stopped: Callable[[], bool]
 
 
 @contextmanager
-def _output(to: str | None, listen: int | None, pty: bool, stopped: Callable[[], bool]) -> Iterator[Write]:
+def _output(to: str | None, listen: int | None, pty: bool, baud: int, stopped: Callable[[], bool]) -> Iterator[Write]:
     if listen is not None:
         with _served(listen, stopped) as write:
             yield write
     elif pty:
-        with _pseudo_terminal() as write:
+        with _pseudo_terminal(baud) as write:
             yield write
-    elif to in (None, "-"):
+    elif to is None or to == "-":
         yield _to_standard_output
     else:
-        assert to is not None
-        try:
-            with Path(to).open("wb") as file:
-
-                def write(data: bytes) -> None:
-                    file.write(data)
-
-                yield write
-        except OSError as error:
-            raise OutputError(f"'{printable(to, 200)}' cannot be written: {error.strerror}") from error
+        with _to_file(Path(to)) as write:
+            yield write
 
 
 def _to_standard_output(data: bytes) -> None:
     sys.stdout.buffer.write(data)
     sys.stdout.buffer.flush()
+
+
+@contextmanager
+def _to_file(path: Path) -> Iterator[Write]:
+    try:
+        with path.open("wb") as file:
+
+            def write(data: bytes) -> None:
+                file.write(data)
+
+            yield write
+    except OSError as error:
+        raise OutputError(f"'{printable(str(path), 200)}' cannot be written: {error.strerror}") from error
 
 
 @contextmanager
@@ -168,14 +176,23 @@ def _accept(server: socket.socket, clients: list[socket.socket]) -> None:
 
 
 @contextmanager
-def _pseudo_terminal() -> Iterator[Write]:
-    """A serial port that another program can open; bytes wait in the kernel, and are lost when nobody reads."""
+def _pseudo_terminal(baud: int) -> Iterator[Write]:
+    """A serial port that another program can open; bytes wait in the kernel, and are lost when nobody reads.
+
+    A pseudo-terminal has no line: its rate is only noted in its settings. The simulated line sets the pace.
+    """
     if not hasattr(os, "openpty"):
         raise OutputError("this system has no pseudo-terminals; use --listen PORT")
+    import termios
     import tty
 
     ours, theirs = os.openpty()
     tty.setraw(theirs)
+    speed = getattr(termios, f"B{baud}", None)
+    if speed is not None:
+        settings = termios.tcgetattr(theirs)
+        settings[4] = settings[5] = speed
+        termios.tcsetattr(theirs, termios.TCSANOW, settings)
     os.set_blocking(ours, False)
     click.echo(os.ttyname(theirs))
     sys.stdout.flush()

@@ -99,7 +99,9 @@ class Generator:
             for letter, number in zip(self._orbits.letter.tolist(), self._orbits.number.tolist(), strict=True)
         ]
         self._held_m: Floats | None = None
-        self._frozen: Told | None = None
+        self._latest: Told | None = None
+        self._repeated: Told | None = None
+        """While the receiver is frozen: what it says again and again."""
         self._powered_s = 0.0
         self._truth = Truth(scenario, seed, self._levels.channels)
 
@@ -186,18 +188,19 @@ class Generator:
         told = self._tell(time_s, state, i, second, quality, age_s, error_m)
         if not settled:
             told = self._strange(told, time_s)
-        if state.on("frozen", i):
-            self._frozen = told = self._frozen or told
-        else:
-            self._frozen = None
+        self._repeated = self._latest if state.on("frozen", i) else None
+        self._latest = told = self._repeated or told
         kinds: tuple[str, ...] = stream.sentences
         if number % stream.satellites_every:
             kinds = tuple(kind for kind in kinds if kind != "GSV")
         text = state.text(i) if math.fmod(time_s, TEXT_S) < 0.5 / stream.rate_hz else ""
         sentences = self._writer.epoch(told, (*kinds, "TXT") if text and "TXT" not in kinds else kinds, text=text)
-        self._truth.epoch(time_s, quality, age_s, error_m=error_m, used=second.used, dops=second.dops)
-        if "GSV" in kinds:
-            self._truth.levels(time_s, second.level_sum, second.level_count)
+        if told is self._repeated:
+            self._truth.silent(time_s)  # sentences come, but nothing new is told
+        else:
+            self._truth.epoch(time_s, quality, age_s, error_m=error_m, used=second.used, dops=second.dops)
+            if "GSV" in kinds:
+                self._truth.levels(time_s, second.level_sum, second.level_count)
         pieces = self._wire.send(
             time_s + stream.latency_s,
             sentences,
