@@ -23,6 +23,11 @@ from gnssmon.simulation.scenario import load_scenario, scenario_names
 
 Write = Callable[[bytes], None]
 
+
+class _EnoughError(Exception):
+    """The reader of standard output has gone."""
+
+
 LOOPBACK = "127.0.0.1"
 ACCEPT_S = 0.2
 
@@ -66,7 +71,8 @@ def command(
     if truth is not None:
         _keep(truth, {})  # a path that cannot be written is better known before the run than behind it
     with session.stop_on_signals() as stop, _output(to, listen, pty, chosen.stream.baud, stop.is_set) as write:
-        _send(run, write, rate, stop.is_set)
+        with suppress(_EnoughError):
+            _send(run, write, rate, stop.is_set)
         stopped = stop.is_set()
     if truth is not None:
         _keep(truth, run.truth())
@@ -118,8 +124,13 @@ def _output(to: str | None, listen: int | None, pty: bool, baud: int, stopped: C
 
 
 def _to_standard_output(data: bytes) -> None:
-    sys.stdout.buffer.write(data)
-    sys.stdout.buffer.flush()
+    try:
+        sys.stdout.buffer.write(data)
+        sys.stdout.buffer.flush()
+    except BrokenPipeError:
+        # The reader has had enough (``| head``): a proper end. What Python still holds must not fail again at exit.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        raise _EnoughError from None
 
 
 @contextmanager
