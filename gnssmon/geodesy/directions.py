@@ -30,7 +30,8 @@ def cell_of(azimuth_deg: Floats, elevation_deg: Floats) -> npt.NDArray[np.intp]:
     ring = np.minimum((zenith_deg // RING_DEG).astype(np.intp), len(CELLS_OF_RING) - 1)
     count = _COUNT[ring]
     place = np.minimum((np.mod(azimuth_deg, 360.0) / 360.0 * count).astype(np.intp), count - 1)
-    return _FIRST[ring] + place
+    cell: npt.NDArray[np.intp] = _FIRST[ring] + place
+    return cell
 
 
 def cell_edges() -> tuple[Floats, Floats, Floats, Floats]:
@@ -39,7 +40,9 @@ def cell_edges() -> tuple[Floats, Floats, Floats, Floats]:
     place = np.arange(CELLS) - _FIRST[ring]
     width = 360.0 / _COUNT[ring]
     high = 90.0 - ring * RING_DEG
-    return place * width, (place + 1) * width, high - RING_DEG, high
+    edges = (place * width, (place + 1) * width, high - RING_DEG, high)
+    low_azimuth, high_azimuth, low, high = (np.asarray(edge, dtype=np.float64) for edge in edges)
+    return low_azimuth, high_azimuth, low, high
 
 
 def cell_centres() -> tuple[Floats, Floats]:

@@ -74,8 +74,17 @@ class Dop:
     def merge(self, other: Self) -> None:
         """Take in what ``other`` knows of a later part of the stream."""
         self._reported.merge(other._reported)
-        self._recomputed.merge(other._recomputed)
-        self._slot = other._slot if other._slot is not None else self._slot
+        if other._slot is None:
+            return
+        # The ten seconds that the border cuts were looked at by both parts: the earlier look counts.
+        begin = int(self._slot is not None and int(other._recomputed.axis_ms[0]) // SLOT_MS == self._slot)
+        if begin:
+            names = ("hdop", "hdop_common", "pdop_common", "hdop_systems", "pdop_systems")
+            rest = {name: other._recomputed[name][begin:] for name in names}
+            self._recomputed.update(other._recomputed.axis_ms[begin:], **rest)
+        else:
+            self._recomputed.merge(other._recomputed)
+        self._slot = other._slot
 
     def summary(self, span: Span = EVERYTHING, *, confidence: float = DEFAULT_CONFIDENCE) -> dict[str, Estimate]:
         """Every quantity by name. Medians of what was seen: no interval is given beyond it."""

@@ -1,8 +1,7 @@
 """The sky: where satellites passed, where they were heard, and how high the horizon stands.
 
-Strategy. Once in ten seconds the satellites' directions are looked at; a minute's looks at one satellite become one
-row: direction, how often listed, how often heard, its level. A row per satellite and minute is little (2 MB a day with
-60 satellites), merges by joining, and everything else, cells, horizon, tracks, is computed from the rows of a window.
+Strategy. ``looks`` keeps a row per satellite and minute; everything else, cells, horizon, tracks, is computed from the
+rows of a window.
 """
 
 from __future__ import annotations
@@ -14,10 +13,10 @@ import numpy.typing as npt
 
 from gnssmon.constellations import identity
 from gnssmon.epochs.batch import EpochBatch
-from gnssmon.estimators.rows import Rows
 from gnssmon.geodesy import directions
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity, exact
-from gnssmon.statistics.grid import CODES, grid_of_chosen
+from gnssmon.statistics.grid import CODES
+from gnssmon.statistics.looks import Looks
 from gnssmon.statistics.pictures import (
     CELL_BLOCKED,
     CELL_MIXED,
@@ -33,9 +32,6 @@ from gnssmon.statistics.subject import EVERYTHING, Site, Span
 Floats = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.int64]
 
-SLOT_MS = 10_000
-MOST_ROWS = 2_000_000
-"""Satellite-minutes kept, three weeks of 60 satellites (44 MB); after that the oldest go."""
 SECTORS = 36
 CELLS_ABOVE = "equal-area cells: T. Fuhrmann et al., GPS Solutions 19 (2015)"
 HORIZON = "likelihood of a step in the share of tracked passes over elevation; this program's own definition"
@@ -89,20 +85,7 @@ class Sky:
 
     def __init__(self, site: Site) -> None:
         self._site = site
-        self._rows = Rows(
-            {
-                "minute": np.int64,
-                "satellite": np.int16,
-                "elevation_deg": np.int8,
-                "azimuth_deg": np.int16,
-                "listed": np.uint8,
-                "tracked": np.uint8,
-                "cn0_dbhz": np.float32,
-            }
-        )
-        self._open: list[tuple[npt.NDArray[np.generic], ...]] = []
-        """Looks of the minute that still goes on: minute, satellite, elevation, azimuth, C/N0."""
-        self._slot: int | None = None
+        self._looks = Looks()
         self._latitude_deg = np.nan
 
     def update(self, batch: EpochBatch) -> None:
@@ -110,53 +93,13 @@ class Sky:
         where = np.flatnonzero(batch.fixed_position)
         if len(where):
             self._latitude_deg = float(batch.latitude_deg[where[-1]])
-        if not len(batch.signals.epoch):
-            return
-        listed = np.zeros(len(batch), dtype=bool)
-        listed[batch.signals.epoch] = True
-        able = np.flatnonzero(listed)
-        slot = batch.axis_ms[able] // SLOT_MS
-        first = np.ones(len(able), dtype=bool)
-        first[1:] = slot[1:] != slot[:-1]
-        first[0] = slot[0] != self._slot
-        self._slot = int(slot[-1])
-        chosen = np.zeros(len(batch), dtype=bool)
-        chosen[able[first]] = True
-        if not chosen.any():
-            return
-        grid = grid_of_chosen(batch, chosen)
-        epoch, column = np.nonzero(np.isfinite(grid.elevation_deg))
-        self._open.append(
-            (
-                batch.minute[chosen][epoch],
-                grid.satellite[column],
-                np.rint(grid.elevation_deg[epoch, column]),
-                np.mod(np.rint(grid.azimuth_deg[epoch, column]), 360.0),
-                grid.cn0_dbhz[epoch, column],
-            )
-        )
-        self._close(int(batch.minute[chosen][-1]))
+        self._looks.update(batch)
 
     def merge(self, other: Self) -> None:
         """Take in what ``other`` knows of a later part of the stream."""
-        if other._slot is not None:
-            self._slot = other._slot
         if np.isfinite(other._latitude_deg):
             self._latitude_deg = other._latitude_deg
-        if len(other._rows) and self._open:
-            last = int(self._open[-1][0][-1])
-            if last != int(other._rows["minute"][0]):
-                self._close(None)
-        if len(other._rows):
-            self._close(None)
-            self._rows.append(**{name: other._rows[name] for name in other._names})
-        self._open += other._open
-        if self._open:
-            self._close(int(self._open[-1][0][-1]))
-
-    @property
-    def _names(self) -> tuple[str, ...]:
-        return ("minute", "satellite", "elevation_deg", "azimuth_deg", "listed", "tracked", "cn0_dbhz")
+        self._looks.merge(other._looks)
 
     def summary(self, span: Span = EVERYTHING, *, confidence: float = DEFAULT_CONFIDENCE) -> dict[str, Estimate]:
         """Every quantity by name; shares are facts of what was seen."""
@@ -202,34 +145,10 @@ class Sky:
             mask_deg=self._site.mask_deg,
         )
 
-    def _close(self, going_on: int | None) -> None:
-        """Turn the looks of finished minutes into rows; ``going_on``: the minute that may still get more looks."""
-        if not self._open:
-            return
-        minute, satellite, elevation, azimuth, cn0 = (np.concatenate(c) for c in zip(*self._open, strict=True))
-        done = np.ones(len(minute), dtype=bool) if going_on is None else minute != going_on
-        self._open = [] if going_on is None else [tuple(c[~done] for c in (minute, satellite, elevation, azimuth, cn0))]
-        if self._open and not len(self._open[0][0]):
-            self._open = []
-        if done.any():
-            self._rows.append(**_by_minute(minute[done], satellite[done], elevation[done], azimuth[done], cn0[done]))
-            if len(self._rows) > 2 * MOST_ROWS:
-                self._rows.keep(slice(-MOST_ROWS, None))
-
     def _within(self, span: Span) -> dict[str, npt.NDArray[np.generic]]:
-        rows = {name: self._rows[name] for name in self._names}
-        if self._open:
-            looks = [np.concatenate(c) for c in zip(*self._open, strict=True)]
-            fresh = _by_minute(*looks)
-            rows = {name: np.concatenate([rows[name], fresh[name].astype(rows[name].dtype)]) for name in self._names}
-        minute = rows["minute"].view(np.int64)
-        inside = np.ones(len(minute), dtype=bool)
-        if span.from_ms is not None:
-            inside &= (minute + 1) * 60_000 > span.from_ms
-        if span.to_ms is not None:
-            inside &= minute * 60_000 < span.to_ms
-        inside &= ~_never_heard(rows)
-        return rows if inside.all() else {name: column[inside] for name, column in rows.items()}
+        rows = self._looks.within(span)
+        silent = _never_heard(rows)
+        return {name: column[~silent] for name, column in rows.items()} if silent.any() else rows
 
     def _cells(self, rows: dict[str, npt.NDArray[np.generic]]) -> tuple[npt.NDArray[np.uint8], npt.NDArray[np.bool_]]:
         """State of each cell, and whether any satellite crossed it."""
@@ -280,32 +199,6 @@ class Sky:
         for i, share_below in enumerate((0.5, 0.05, 0.95)):
             result[i, enough] = candidates[(heap[enough] >= share_below).argmax(axis=1)]
         return result[0], result[1], result[2]
-
-
-def _by_minute(
-    minute: npt.NDArray[np.generic],
-    satellite: npt.NDArray[np.generic],
-    elevation: npt.NDArray[np.generic],
-    azimuth: npt.NDArray[np.generic],
-    cn0: npt.NDArray[np.generic],
-) -> dict[str, npt.NDArray[np.generic]]:
-    """One row per satellite and minute from its looks, in order of time."""
-    key = minute.astype(np.int64) * CODES + satellite.astype(np.int64)
-    keys, first, which = np.unique(key, return_index=True, return_inverse=True)
-    heard = np.isfinite(cn0.astype(np.float64))
-    tracked = np.bincount(which, weights=heard)
-    level = np.bincount(which, weights=np.where(heard, cn0, 0.0).astype(np.float64))
-    with np.errstate(invalid="ignore", divide="ignore"):
-        mean = level / tracked
-    return {
-        "minute": keys // CODES,
-        "satellite": keys % CODES,
-        "elevation_deg": elevation[first],
-        "azimuth_deg": azimuth[first],
-        "listed": np.minimum(np.bincount(which), 255),
-        "tracked": np.minimum(tracked, 255),
-        "cn0_dbhz": mean,
-    }
 
 
 def _never_heard(rows: dict[str, npt.NDArray[np.generic]]) -> npt.NDArray[np.bool_]:
