@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import importlib
+import os
 import sys
 import traceback
 
@@ -59,24 +60,31 @@ def program() -> None:
 
 def main(arguments: list[str] | None = None) -> None:
     """Run the program and leave with the contract's exit code."""
+    sys.exit(_run(sys.argv[1:] if arguments is None else arguments))
+
+
+def _run(arguments: list[str]) -> int:
+    # Not ``program.main``: it leaves with 1 when the reader of our output has gone, and 1 is a rejection.
     try:
-        code = program.main(args=arguments, prog_name="gnssmon", standalone_mode=False)
-    except click.exceptions.Abort:
-        code = INTERRUPTED
-    except KeyboardInterrupt:
-        code = INTERRUPTED
+        with program.make_context("gnssmon", list(arguments)) as context:
+            code = program.invoke(context)
+        sys.stdout.flush()
+    except click.exceptions.Exit as leaving:
+        return leaving.exit_code
+    except (click.exceptions.Abort, KeyboardInterrupt):
+        return INTERRUPTED
     except click.ClickException as error:
         error.show()
-        code = WRONG_USAGE
+        return WRONG_USAGE
     except GnssmonError as error:
         click.echo(f"gnssmon: {printable(str(error))}", err=True)
-        code = error.exit_code
+        return error.exit_code
     except BrokenPipeError:
-        # The reader of our standard output went away (``| head``): nobody is left to tell.
-        sys.stderr.close()
-        code = SOURCE_FAILED
+        # The reader of our standard output went away (``| head``): what is left unsaid goes nowhere.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return SOURCE_FAILED
     except Exception:
         traceback.print_exc()
         click.echo("gnssmon: this is a fault of gnssmon itself; nothing was judged", err=True)
-        code = OWN_FAULT
-    sys.exit(code if isinstance(code, int) else ACCEPTED)
+        return OWN_FAULT
+    return code if isinstance(code, int) else ACCEPTED
