@@ -1,127 +1,234 @@
-"""Tiles: one row of counts and sums per minute, which add up to any window.
+"""Tiles: whole numbers by minute and column, that add up to any window.
 
-Strategy. An update groups a batch's samples by minute with ``bincount`` and adds a row per minute; a window is the sum
-of the rows that lie in it; merging two streams' tiles joins their rows. So the merge law holds by construction and a
-24 h log costs no Python loop per epoch. Counts and sums are whole numbers, so that they are exact and do not depend on
-how a stream was cut. The memory is bounded: past ``MOST_FINE`` minutes the older half is rolled up into ten-minute rows
-(later into hours), and windows that begin inside such a row take all of it: that is the resolution given up.
+Strategy. A table of entries (minute, column) → numbers, kept sorted. A column is anything that can be counted apart: a
+signal, a satellite at a level, a bin of a histogram; only what was seen takes room. Taking in samples adds entries, a
+window is a slice of the table, merging two streams joins their tables and combines entries of equal key. Numbers are
+whole, so that sums are exact and no cut of a stream can be seen in them. New entries wait in a heap until somebody asks
+or the heap is large: a live epoch costs microseconds.
+
+Bounded memory. Entries older than some ``age``, counted back from the latest minute seen, are joined to rows of
+several minutes (``LADDER``); windows that begin inside such a row take all of it: that is the resolution given up.
+Where even so the table would pass ``most`` entries, the ages are halved and the widest rows doubled, again and again.
+Rows of one width lie wholly inside rows of the next, so the table depends on what was seen, not on when it was joined.
 """
 
 from __future__ import annotations
 
-from typing import Self
+from typing import NamedTuple, Self
 
 import numpy as np
 import numpy.typing as npt
 
-from gnssmon.estimators.rows import Rows
-
 Ints = npt.NDArray[np.int64]
 
-MOST_FINE = 3000
-"""Minutes kept one by one, two days; a live window is an hour, a log that is looked into closely seldom two days."""
-COARSER = (10, 60)
-"""Widths in minutes that older rows are rolled up to, one after the other."""
+LADDER = ((2880, 10), (14_400, 60))
+"""Age and width in minutes: single minutes for two days, ten minutes for ten days, then hours."""
+MOST_ENTRIES = 1_000_000
+"""Of one table; 16 MB with one number per entry."""
+MOST_WAITING = 8192
+"""New entries that wait; a live stream of four systems brings some hundred a second."""
+JOINING = 360
+"""Minutes of new data after which old rows are joined although nobody asks."""
+MOST_PRESSURE = 20
+"""Halvings of the ages; a table that is still too large then is full of noise, and loses its oldest entries."""
+STEP = 10
+"""All ages and widths are multiples of this many minutes: what is old changes only so often."""
+_COLUMN_BITS = 32
+_COLUMN_MASK = (1 << _COLUMN_BITS) - 1
+
+
+class Entries(NamedTuple):
+    """A part of the table, by rising minute and column, each pair once. Nobody writes to the arrays."""
+
+    minute: Ints
+    """First minute of the row, shape (k,)."""
+    column: Ints
+    values: Ints
+    """Shape (k, measures)."""
 
 
 class Tiles:
-    """Rows of ``width`` whole numbers, keyed by minute. ``grid`` minutes share a row from the start."""
+    """``measures`` numbers for every minute and column, combined by ``combine`` (np.add, np.minimum or np.maximum)."""
 
-    def __init__(self, width: int, *, grid: int = 1, kind: npt.DTypeLike = np.int32) -> None:
-        self.width, self._grid, self._kind = width, grid, np.dtype(kind)
-        self._rows = Rows({"minute": np.int64})
-        self._values = np.empty((0, width), dtype=self._kind)
+    def __init__(
+        self,
+        measures: int = 1,
+        *,
+        combine: np.ufunc = np.add,
+        ladder: tuple[tuple[int, int], ...] = LADDER,
+        most: int = MOST_ENTRIES,
+    ) -> None:
+        self._measures, self._combine, self._ladder, self._most = measures, combine, ladder, most
+        self._key: Ints = np.empty(0, dtype=np.int64)
+        self._values: Ints = np.empty((0, measures), dtype=np.int64)
+        self._used = 0
+        self._waiting: list[tuple[Ints, Ints]] = []
+        self._waiting_entries = 0
+        self._latest: int | None = None
+        self._joined_at: int | None = None
+        """``_latest``, in whole steps, when old rows were last joined."""
+        self._pressure = 0
+        """How often the ages were halved."""
 
     def __len__(self) -> int:
-        return len(self._rows)
-
-    def add(self, minute: Ints, column: npt.NDArray[np.integer], weight: npt.NDArray[np.generic] | None = None) -> None:
-        """Add 1 (or ``weight``) to ``column`` of each sample's minute; arrays of shape (n,), in stream order."""
-        if not len(minute):
-            return
-        keys, row = grouped(minute // self._grid * self._grid)
-        cell = row * self.width + column
-        total = np.bincount(cell, weights=weight, minlength=len(keys) * self.width)
-        self._join(keys, np.rint(total).astype(self._kind).reshape(len(keys), self.width))
-
-    def merge(self, other: Self) -> None:
-        """Take in the rows of ``other``, which stays as it is."""
-        if len(other):
-            self._join(other.minute, other._values[: len(other)])
+        """Entries in the table."""
+        self._settle()
+        return self._used
 
     @property
-    def minute(self) -> Ints:
-        """First minute of each row, in stream order; one may stand in several rows."""
-        return self._rows["minute"].view(np.int64)
+    def latest(self) -> int | None:
+        """Latest minute seen; None: nothing yet."""
+        return self._latest
 
-    def within(self, from_ms: int | None, to_ms: int | None) -> tuple[Ints, Ints]:
-        """Minutes in the stretch of time, rising and each once, and their rows, shapes (t,) and (t, width)."""
-        inside = self._inside(from_ms, to_ms)
-        keys, row = np.unique(self.minute[inside], return_inverse=True)
-        values = self._values[: len(self)][inside].astype(np.int64)
-        if len(keys) == len(values):
-            return keys, values[np.argsort(row)]
-        total = np.zeros((len(keys), self.width), dtype=np.int64)
-        np.add.at(total, row, values)
-        return keys, total
+    def add(self, minute: Ints, column: npt.NDArray[np.integer], *values: npt.NDArray[np.generic]) -> None:
+        """Take in samples: arrays of shape (n,), ``column`` from 0 to 2³² - 1, one array of whole numbers a measure.
 
-    def total(self, from_ms: int | None = None, to_ms: int | None = None) -> Ints:
-        """Sum over the stretch of time, shape (width,)."""
-        values = self._values[: len(self)]
-        if from_ms is not None or to_ms is not None:
-            values = values[self._inside(from_ms, to_ms)]
-        summed: Ints = values.sum(axis=0, dtype=np.int64)
-        return summed
+        Samples of equal minute and column are combined. Without ``values`` each counts 1.
+        """
+        if not len(minute):
+            return
+        key = (np.asarray(minute, dtype=np.int64) << _COLUMN_BITS) | np.asarray(column, dtype=np.int64)
+        table = np.ones((len(key), self._measures), dtype=np.int64)
+        for measure, numbers in enumerate(values):
+            table[:, measure] = numbers
+        self._wait(key, table, int(np.max(minute)))
 
-    def _inside(self, from_ms: int | None, to_ms: int | None) -> npt.NDArray[np.bool_]:
-        minute = self.minute
-        inside = np.ones(len(minute), dtype=bool)
+    def merge(self, other: Self) -> None:
+        """Take in the entries of ``other``, which stays as it is."""
+        for key, values in [(other._key[: other._used], other._values[: other._used]), *other._waiting]:
+            if len(key):
+                self._wait(key, values, other._latest if other._latest is not None else int(key[-1]) >> _COLUMN_BITS)
+        if other._pressure > self._pressure:
+            self._pressure, self._joined_at = other._pressure, None
+        self._settle()
+
+    def select(self, from_ms: int | None = None, to_ms: int | None = None) -> Entries:
+        """The entries of rows that touch the half-open stretch of time; None: open on that side."""
+        self._settle()
+        part = self._part(from_ms, to_ms)
+        key = self._key[part]
+        return Entries(key >> _COLUMN_BITS, key & _COLUMN_MASK, self._values[part])
+
+    def total(self, from_ms: int | None = None, to_ms: int | None = None) -> tuple[Ints, Ints]:
+        """Columns, rising and each once, and their numbers over the stretch of time, shapes (k,) and (k, measures)."""
+        _, column, values = self.select(from_ms, to_ms)
+        return combined(column, values, self._combine)
+
+    def by_minute(self, from_ms: int | None = None, to_ms: int | None = None) -> tuple[Ints, Ints]:
+        """Minutes, rising and each once, and their numbers over all columns, shapes (t,) and (t, measures)."""
+        minute, _, values = self.select(from_ms, to_ms)
+        return combined(minute, values, self._combine, rising=True)
+
+    def check(self) -> None:
+        """Say with an AssertionError where the table is not what it should be (for tests)."""
+        key = self._key[: self._used]
+        assert (np.diff(key) > 0).all(), "keys rise, each once"
+        assert self._used <= self._most, "bounded"
+
+    def _part(self, from_ms: int | None, to_ms: int | None) -> slice:
+        key = self._key[: self._used]
+        low, high = 0, self._used
         if from_ms is not None:
-            inside &= (minute + self._grid) * 60_000 > from_ms
+            low = int(np.searchsorted(key, self._row_of(np.array([from_ms // 60_000]))[0] << _COLUMN_BITS))
         if to_ms is not None:
-            inside &= minute * 60_000 < to_ms
-        return inside
+            high = int(np.searchsorted(key, -(-to_ms // 60_000) << _COLUMN_BITS))
+        return slice(low, max(low, high))
 
-    def _join(self, keys: Ints, values: npt.NDArray[np.generic]) -> None:
-        begin = 0
-        if len(self) and self.minute[-1] == keys[0]:
-            self._values[len(self) - 1] += values[0].astype(self._kind)
-            begin = 1
-        before = len(self)
-        self._rows.append(minute=keys[begin:])
-        if len(self) > len(self._values):
-            roomier = np.zeros((max(16, len(self), len(self._values) * 3 // 2), self.width), dtype=self._kind)
-            roomier[:before] = self._values[:before]
-            self._values = roomier
-        self._values[before : len(self)] = values[begin:]
-        if len(self) > 2 * MOST_FINE:
-            self._roll_up()
+    def _row_of(self, minute: Ints) -> Ints:
+        """First minute of the row that holds each minute."""
+        row = minute
+        if self._latest is None:
+            return row
+        for age, wide in self._rungs():
+            begin = minute // wide * wide
+            row = np.where(begin + wide <= self._latest - age, begin, row)
+        return row
 
-    def _roll_up(self) -> None:
-        """Join the older half of the rows to coarser ones; those that are coarse already to still coarser."""
-        half = len(self) // 2
-        minute = self.minute.copy()
-        older = np.arange(len(minute)) < half
-        for wide in COARSER:
-            keys = np.where(older, minute // wide * wide, minute)
-            kept, row = np.unique(keys, return_inverse=True)
-            if len(kept) <= MOST_FINE + half:
-                minute = keys
+    def _rungs(self) -> list[tuple[int, int]]:
+        """Ages and widths as they are now."""
+        rungs = [((age >> self._pressure) // STEP * STEP, wide) for age, wide in self._ladder]
+        age, wide = rungs[-1]
+        return [*rungs[:-1], (age, wide << self._pressure)]
+
+    def _wait(self, key: Ints, values: Ints, latest: int) -> None:
+        self._waiting.append((key, values))
+        self._waiting_entries += len(key)
+        self._latest = latest if self._latest is None else max(self._latest, latest)
+        if self._waiting_entries > MOST_WAITING:
+            self._take_in()
+            if self._joined_at is None or self._latest - self._joined_at >= JOINING or self._used > self._most:
+                self._settle()
+
+    def _settle(self) -> None:
+        """Bring the table to the state that depends on nothing but what was seen."""
+        self._take_in()
+        if self._latest is None:
+            return
+        step = self._latest // STEP * STEP
+        if step != self._joined_at:
+            self._joined_at = step
+            self._join_old()
+        while self._used > self._most:
+            if self._pressure == MOST_PRESSURE:
+                kept = self._used - self._most
+                self._replace(0, self._key[kept : self._used].copy(), self._values[kept : self._used].copy())
                 break
-        kept, row = np.unique(minute, return_inverse=True)
-        total = np.zeros((len(kept), self.width), dtype=self._kind)
-        np.add.at(total, row, self._values[: len(self)])
-        self._rows = Rows({"minute": np.int64})
-        self._rows.append(minute=kept)
-        self._values = total
+            self._pressure += 1
+            self._join_old()
+
+    def _take_in(self) -> None:
+        """Move what waits into the table."""
+        if not self._waiting:
+            return
+        key = np.concatenate([key for key, _ in self._waiting])
+        values = np.concatenate([values for _, values in self._waiting])
+        self._waiting, self._waiting_entries = [], 0
+        key, values = combined(key, values, self._combine)
+        # Usually new entries lie behind the table but for its last minute; a receiver's clock may step back.
+        begin = int(np.searchsorted(self._key[: self._used], key[0]))
+        if begin < self._used:
+            key = np.concatenate([self._key[begin : self._used], key])
+            values = np.concatenate([self._values[begin : self._used], values])
+            key, values = combined(key, values, self._combine)
+        self._replace(begin, key, values)
+
+    def _replace(self, begin: int, key: Ints, values: Ints) -> None:
+        """Put entries in the place of all those from ``begin`` on."""
+        end = begin + len(key)
+        if end > len(self._key):
+            roomier_key = np.empty(max(256, end + end // 4), dtype=np.int64)
+            roomier_values = np.empty((len(roomier_key), self._measures), dtype=np.int64)
+            roomier_key[:begin], roomier_values[:begin] = self._key[:begin], self._values[:begin]
+            self._key, self._values = roomier_key, roomier_values
+        self._key[begin:end] = key
+        self._values[begin:end] = values
+        self._used = end
+
+    def _join_old(self) -> None:
+        """Combine the entries of rows that have grown wider."""
+        assert self._latest is not None
+        youngest = self._latest - self._rungs()[0][0]
+        end = int(np.searchsorted(self._key[: self._used], youngest << _COLUMN_BITS))
+        key = self._key[:end]
+        minute = key >> _COLUMN_BITS
+        row = self._row_of(minute)
+        if (row == minute).all():
+            return
+        key, values = combined((row << _COLUMN_BITS) | (key & _COLUMN_MASK), self._values[:end], self._combine)
+        tail_key, tail_values = self._key[end : self._used].copy(), self._values[end : self._used].copy()
+        self._replace(0, key, values)
+        self._replace(len(key), tail_key, tail_values)
 
 
-def grouped(keys: Ints) -> tuple[Ints, npt.NDArray[np.intp]]:
-    """Distinct keys in order of first appearance run by run, and for each sample which of them it has.
-
-    Keys that come in runs, as minutes of a stream do, need no sorting.
-    """
-    change = np.empty(len(keys), dtype=bool)
-    change[0] = True
-    np.not_equal(keys[1:], keys[:-1], out=change[1:])
-    return keys[change], np.cumsum(change) - 1
+def combined(key: Ints, values: Ints, combine: np.ufunc = np.add, *, rising: bool = False) -> tuple[Ints, Ints]:
+    """Keys, rising and each once, with the combined rows of ``values`` (k, m). ``rising``: the keys rise already."""
+    if not rising and not (key[1:] >= key[:-1]).all():
+        order = np.argsort(key, kind="stable")
+        key, values = key[order], values[order]
+    first = np.ones(len(key), dtype=bool)
+    np.not_equal(key[1:], key[:-1], out=first[1:])
+    if first.all():
+        return key, values
+    start = np.flatnonzero(first)
+    result: Ints = combine.reduceat(values, start, axis=0)
+    return key[start], result

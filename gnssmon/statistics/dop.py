@@ -7,19 +7,30 @@ from typing import ClassVar, Self
 import numpy as np
 import numpy.typing as npt
 
+from gnssmon.constellations.identity import SYSTEM_STEP
 from gnssmon.epochs.batch import EpochBatch
+from gnssmon.estimators.histogram import quantile
 from gnssmon.estimators.series import Series
+from gnssmon.estimators.tiles import Tiles
 from gnssmon.geodesy.dop import dilution
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity, exact
-from gnssmon.statistics.grid import CODES, grid_of_chosen
+from gnssmon.statistics.estimates import quantile_estimate
+from gnssmon.statistics.grid import CODES, azimuths_deg, elevations_deg, grid_of
 from gnssmon.statistics.subject import EVERYTHING, Site, Span
 
-MOST_ROWS = 1_500_000
-"""Reported values kept one by one, two weeks at 1 Hz (36 MB); beyond that evenly thinned in time."""
-MOST_RECOMPUTED = 300_000
+Floats = npt.NDArray[np.float64]
+
+MOST_ROWS = 100_000
+"""Reported values kept one by one for intervals, and recomputed ones (12 days); then evenly thinned in time."""
 SLOT_MS = 10_000
 """Recomputed at most once in ten seconds: the geometry does not change faster."""
-SYSTEM_STEP = 1024
+PER_UNIT = 1000
+"""Reported values are counted in thousandths; receivers print two decimals at most."""
+LARGEST = 1000.0
+"""A reported value beyond this (99.99 often means: none) says no more than this one."""
+NAME_STEP = 1 << 24
+REPORTED_NAMES = ("hdop", "pdop", "vdop")
+RECOMPUTED_NAMES = ("reported", "hdop_common", "pdop_common", "hdop_systems", "pdop_systems")
 LANGLEY = "R. B. Langley, Dilution of precision, GPS World, May 1999"
 REPORTED = "as the receiver reports it (GSA; HDOP from GGA or GNS)"
 ENOUGH = 0.8
@@ -27,7 +38,7 @@ ENOUGH = 0.8
 
 
 class Dop:
-    """Reported and recomputed values, epoch by epoch."""
+    """Counts of the reported values by the minute; recomputed values one by one."""
 
     QUANTITIES: ClassVar[tuple[Quantity, ...]] = (
         Quantity(name="dop.pdop_median", unit="1", meaning="Median of the reported PDOP.", source=REPORTED),
@@ -39,7 +50,7 @@ class Dop:
             unit="1",
             meaning=(
                 "Median HDOP from azimuth and elevation of the satellites used, one clock a system or one for all, "
-                "whichever is nearer to the receiver's; whole degrees move it by about 1 %."
+                "whichever is nearer to the receiver's; whole degrees move it by 0.1 to 0.5 %, at most 3 %."
             ),
             source=LANGLEY,
         ),
@@ -58,119 +69,116 @@ class Dop:
     )
 
     def __init__(self, site: Site) -> None:
-        self._reported = Series(dict.fromkeys(("pdop", "hdop", "vdop"), np.float32), most_rows=MOST_ROWS)
-        names = ("hdop", "hdop_common", "pdop_common", "hdop_systems", "pdop_systems")
-        self._recomputed = Series(dict.fromkeys(names, np.float32), most_rows=MOST_RECOMPUTED)
+        self._counts = Tiles()
+        """Epochs by name and value."""
+        self._reported = Series(dict.fromkeys(REPORTED_NAMES, np.float32), most_rows=MOST_ROWS)
+        self._recomputed = Series(dict.fromkeys(RECOMPUTED_NAMES, np.float32), most_rows=MOST_ROWS)
         self._slot: int | None = None
 
     def update(self, batch: EpochBatch) -> None:
         """Take in closed epochs."""
-        counted = batch.counted & (batch.quality != 0)
-        self._reported.update(
-            batch.axis_ms[counted], pdop=batch.pdop[counted], hdop=batch.hdop[counted], vdop=batch.vdop[counted]
-        )
+        if not len(batch):
+            return
         self._recompute(batch)
+        counted = np.flatnonzero(batch.counted & (batch.quality != 0))
+        values = {name: getattr(batch, name)[counted] for name in REPORTED_NAMES}
+        minute = batch.minute[counted]
+        for index, name in enumerate(REPORTED_NAMES):
+            known = np.flatnonzero(values[name] > 0.0)
+            whole = np.rint(np.minimum(values[name][known], LARGEST) * PER_UNIT).astype(np.int64)
+            self._counts.add(minute[known], whole + index * NAME_STEP)
+        self._reported.update(batch.axis_ms[counted], **values)
 
     def merge(self, other: Self) -> None:
         """Take in what ``other`` knows of a later part of the stream."""
+        self._counts.merge(other._counts)
         self._reported.merge(other._reported)
         if other._slot is None:
             return
-        # The ten seconds that the border cuts were looked at by both parts: the earlier look counts.
-        begin = int(self._slot is not None and int(other._recomputed.axis_ms[0]) // SLOT_MS == self._slot)
-        if begin:
-            names = ("hdop", "hdop_common", "pdop_common", "hdop_systems", "pdop_systems")
-            rest = {name: other._recomputed[name][begin:] for name in names}
-            self._recomputed.update(other._recomputed.axis_ms[begin:], **rest)
-        else:
-            self._recomputed.merge(other._recomputed)
+        later = other._recomputed
+        # The other began with its first epoch; here that may be the second of a slot.
+        again = int(len(later) > 0 and self._slot == later.axis_ms[0] // SLOT_MS)
+        self._recomputed.update(later.axis_ms[again:], **{name: later[name][again:] for name in RECOMPUTED_NAMES})
         self._slot = other._slot
 
     def summary(self, span: Span = EVERYTHING, *, confidence: float = DEFAULT_CONFIDENCE) -> dict[str, Estimate]:
-        """Every quantity by name. Medians of what was seen: no interval is given beyond it."""
+        """Every quantity by name."""
         answers = {quantity.name: NOTHING for quantity in self.QUANTITIES}
         chosen = self._reported.within(span.from_ms, span.to_ms)
-        for name in ("pdop", "hdop", "vdop"):
-            values = _finite(self._reported[name].view(np.float32)[chosen])
-            if len(values):
-                answers[f"dop.{name}_median"] = exact(_short(np.median(values)), len(values))
-                if name == "pdop":
-                    answers["dop.pdop_max"] = exact(_short(values.max()), len(values))
+        column, counts = self._counts.total(span.from_ms, span.to_ms)
+        for index, name in enumerate(REPORTED_NAMES):
+            own = column // NAME_STEP == index
+            if not own.any():
+                continue
+            value, count = column[own] % NAME_STEP / PER_UNIT, counts[own, 0]
+            samples = self._reported[name].view(np.float32)[chosen].astype(np.float64)
+            samples = np.round(samples[samples > 0.0], 3)
+            answers[f"dop.{name}_median"] = quantile_estimate(
+                samples, 0.5, confidence, value=quantile(value, count, 0.5)
+            )
+            if name == "pdop":
+                answers["dop.pdop_max"] = exact(float(value[-1]), int(count.sum()))
         chosen = self._recomputed.within(span.from_ms, span.to_ms)
         columns = {
-            name: self._recomputed[name].view(np.float32)[chosen].astype(np.float64)
-            for name in ("hdop", "hdop_common", "pdop_common", "hdop_systems", "pdop_systems")
+            name: self._recomputed[name].view(np.float32)[chosen].astype(np.float64) for name in RECOMPUTED_NAMES
         }
-        fits = {}
-        for kind in ("common", "systems"):
-            difference = _finite(np.abs(columns[f"hdop_{kind}"] - columns["hdop"]))
-            fits[kind] = float(np.median(difference)) if len(difference) else np.inf
-        kind = "systems" if fits["systems"] <= fits["common"] else "common"
+        clocks = "systems" if _distance(columns, "systems") <= _distance(columns, "common") else "common"
         for name in ("hdop", "pdop"):
-            values = _finite(columns[f"{name}_{kind}"])
+            values = columns[f"{name}_{clocks}"]
+            values = values[np.isfinite(values)]
             if len(values):
-                answers[f"dop.{name}_recomputed_median"] = exact(float(np.median(values)), len(values))
-                answers["dop.clocks_per_system"] = exact(float(kind == "systems"), len(values))
+                answers[f"dop.{name}_recomputed_median"] = quantile_estimate(values, 0.5, confidence)
+                answers["dop.clocks_per_system"] = exact(float(clocks == "systems"), len(values))
         return answers
 
     def picture(self, span: Span = EVERYTHING) -> None:
         """Drawn with the fix, minute by minute."""
 
     def _recompute(self, batch: EpochBatch) -> None:
-        count = len(batch)
-        if not count or not len(batch.used.epoch) or not len(batch.signals.epoch):
+        """Choose the first epoch of each slot that tells which satellites were used and where they stand."""
+        able = np.zeros((2, len(batch)), dtype=bool)
+        able[0, batch.used.epoch] = True
+        able[1, batch.signals.epoch] = True
+        epochs = np.flatnonzero(able.all(axis=0))
+        if not len(epochs):
             return
-        has = np.zeros(count, dtype=bool)
-        has[batch.used.epoch] = True
-        listed = np.zeros(count, dtype=bool)
-        listed[batch.signals.epoch] = True
-        able = np.flatnonzero(has & listed)
-        if not len(able):
-            return
-        slot = batch.axis_ms[able] // SLOT_MS
-        first = np.ones(len(able), dtype=bool)
-        first[1:] = slot[1:] != slot[:-1]
-        first[0] = self._slot is None or slot[0] != self._slot
+        slot = batch.axis_ms[epochs] // SLOT_MS
+        first = np.diff(slot, prepend=slot[0] - 1 if self._slot is None else self._slot) != 0
         self._slot = int(slot[-1])
-        chosen = np.zeros(count, dtype=bool)
-        chosen[able[first]] = True
-        if chosen.any():
-            self._add(batch, chosen)
+        if first.any():
+            self._add(batch, epochs[first])
 
-    def _add(self, batch: EpochBatch, chosen: npt.NDArray[np.bool_]) -> None:
-        grid = grid_of_chosen(batch, chosen)
-        place = np.cumsum(chosen) - 1
-        column = np.full(CODES, -1)
-        column[grid.satellite] = np.arange(len(grid.satellite))
-        rows = np.flatnonzero(chosen[batch.used.epoch])
-        epoch, at = place[batch.used.epoch[rows]], column[batch.used.satellite[rows]]
-        used = np.zeros(grid.listed.shape, dtype=bool)
+    def _add(self, batch: EpochBatch, chosen: npt.NDArray[np.intp]) -> None:
+        grid = grid_of(batch)
+        place = np.full(len(batch), -1)
+        place[chosen] = np.arange(len(chosen))
+        row = np.flatnonzero(place[batch.used.epoch] >= 0)
+        epoch, satellite = place[batch.used.epoch[row]], batch.used.satellite[row]
+        number = np.bincount(np.unique(epoch * CODES + satellite) // CODES, minlength=len(chosen))
+        line = np.full(CODES, -1)
+        line[grid.satellite] = np.arange(len(grid.satellite))
+        at = line[satellite]
+        direction = grid.direction[:, chosen].T
+        used = np.zeros(direction.shape, dtype=bool)
         used[epoch[at >= 0], at[at >= 0]] = True
-        # Listed twice, a satellite counts once; SBAS of GP and GSA of two signals are no second satellites.
-        named = np.bincount(epoch, minlength=len(used))
-        placed = used & np.isfinite(grid.azimuth_deg)
-        system = grid.satellite // SYSTEM_STEP
-        _, clock = np.unique(system, return_inverse=True)
-        angles = grid.azimuth_deg.astype(np.float64), grid.elevation_deg.astype(np.float64)
-        common = dilution(*angles, placed, np.zeros(len(system), dtype=np.intp))
-        apart = dilution(*angles, placed, clock.astype(np.intp))
-        known = placed.sum(axis=1) >= ENOUGH * named
-        blank = np.where(known, 1.0, np.nan)
+        used &= direction >= 0
+        _, clock = np.unique(grid.satellite // SYSTEM_STEP, return_inverse=True)
+        angles = azimuths_deg(direction), elevations_deg(direction)
+        common = dilution(*angles, used, np.zeros(len(clock), dtype=np.intp))
+        systems = dilution(*angles, used, clock)
+        blank = np.where(used.sum(axis=1) >= ENOUGH * number, 1.0, np.nan)
         self._recomputed.update(
             batch.axis_ms[chosen],
-            hdop=batch.hdop[chosen],
+            reported=batch.hdop[chosen],
             hdop_common=common.hdop * blank,
             pdop_common=common.pdop * blank,
-            hdop_systems=apart.hdop * blank,
-            pdop_systems=apart.pdop * blank,
+            hdop_systems=systems.hdop * blank,
+            pdop_systems=systems.pdop * blank,
         )
 
 
-def _finite(values: npt.NDArray[np.floating]) -> npt.NDArray[np.floating]:
-    finite: npt.NDArray[np.floating] = values[np.isfinite(values)]
-    return finite
-
-
-def _short(value: np.floating) -> float:
-    """Reported values have few decimals; single precision would print more."""
-    return round(float(value), 4)
+def _distance(columns: dict[str, Floats], clocks: str) -> float:
+    """How far the recomputed HDOP lies from the reported one, typically; infinite where neither is known."""
+    difference = np.abs(columns[f"hdop_{clocks}"] - columns["reported"])
+    difference = difference[np.isfinite(difference)]
+    return float(np.median(difference)) if len(difference) else np.inf

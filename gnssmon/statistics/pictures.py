@@ -5,7 +5,7 @@ Times are ``axis_ms`` (see ``EpochBatch``); minutes are ``axis_ms // 60 000``. N
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 import numpy.typing as npt
@@ -87,6 +87,14 @@ class LevelPicture:
     minute: Ints
     level_dbhz: Floats
     """Common-mode level per minute, shape (signals, t): free of satellites rising and setting; NaN empty."""
+    satellites: tuple[str, ...] = ()
+    """``G07``; one entry a satellite and signal, k in all."""
+    satellite_signal: npt.NDArray[np.intp] = field(default_factory=lambda: np.empty(0, dtype=np.intp))
+    """Row of ``signals``, shape (k,)."""
+    satellite_count: Ints = field(default_factory=lambda: np.empty(0, dtype=np.int64))
+    satellite_mean_dbhz: Floats = field(default_factory=lambda: np.empty(0))
+    satellite_offset_db: Floats = field(default_factory=lambda: np.empty(0))
+    """What is the satellite's own: its mean against the curve at its elevations. Shapes (k,)."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,4 +1,4 @@
-"""C/N0: how strong the signals are, by signal, by elevation, over time."""
+"""C/N0: how strong the signals are, by signal, by satellite, by elevation, over time."""
 
 from __future__ import annotations
 
@@ -8,35 +8,45 @@ import numpy as np
 import numpy.typing as npt
 
 from gnssmon.epochs.batch import EpochBatch
-from gnssmon.estimators import long_run
+from gnssmon.estimators.histogram import quantile
 from gnssmon.estimators.series import Series
 from gnssmon.estimators.tiles import Tiles
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity
-from gnssmon.statistics.grid import LABELS, grid_of, label_numbers, strongest_mean
+from gnssmon.statistics import level_curve
+from gnssmon.statistics.estimates import mean_estimate, quantile_estimate
+from gnssmon.statistics.grid import (
+    LABELS,
+    PER_DB,
+    SIGNAL_STEP,
+    STRONGEST,
+    Grid,
+    elevations_deg,
+    grid_of,
+    labels_of_lines,
+    strongest_sums,
+)
+from gnssmon.statistics.level_curve import BAND_DEG, BANDS
+from gnssmon.statistics.looks import Looks
 from gnssmon.statistics.pictures import LevelPicture
 from gnssmon.statistics.subject import EVERYTHING, Site, Span
 
-Floats = npt.NDArray[np.float64]
-Ints = npt.NDArray[np.int64]
-
 FAMILY = "cn0.mean_dbhz."
-BIN_DEG = 5.0
-BINS = 18
-TENTHS = 1000
-"""Levels from 0 to 99.9 dB-Hz in steps of 0.1, finer than receivers print."""
-WHOLE = 100
-SLOWEST_HOUR = 60
-"""Minutes to a row of the finer histograms: quantiles by elevation are drawn over whole hours."""
-MOST_ROWS = 1_500_000
-CURVE_MINUTES = 10
-REFERENCE_BIN = 9
-"""45 to 50 degrees: the elevation that the level over time is reduced to."""
+MOST_ROWS = 100_000
+"""Epochs kept one by one for intervals, more than a day at 1 Hz; then evenly thinned in time."""
+DB_STEP = 64
+"""Whole dB-Hz in a histogram; no antenna gives 63, and what is above counts as 63."""
+LOUDEST_TENTH = 999
+SPREAD_LADDER = ((120, 10), (1440, 60), (14_400, 1440))
+"""Histograms have many entries: single minutes for two hours only, then ten minutes, hours, and days."""
+LINES_LADDER = ((2880, 10),)
+"""No wider than ten minutes, in which a satellite moves by five degrees."""
+PER_TENTH = PER_DB // 10
 
 RAW = "unweighted mean over signal reports with C/N0 > 0, in dB-Hz"
 
 
 class SignalLevel:
-    """Counts of levels by signal, elevation and minute."""
+    """Sums and histograms of the levels by signal, satellite and minute."""
 
     QUANTITIES: ClassVar[tuple[Quantity, ...]] = (
         Quantity(name="cn0.mean_dbhz", unit="dB-Hz", meaning="Mean C/N0 of all signals.", source=RAW),
@@ -56,161 +66,138 @@ class SignalLevel:
     )
 
     def __init__(self, site: Site) -> None:
-        labels = len(LABELS)
-        self._levels = Tiles(TENTHS, kind=np.int32)
-        self._counts = Tiles(labels * (BINS + 1), kind=np.int32)
-        """By label and elevation bin; the last bin is for an elevation not stated."""
-        self._sums = Tiles(labels, kind=np.int64)
-        """Thousandths of dB-Hz by label."""
-        self._curve = Tiles(labels * BINS, grid=CURVE_MINUTES, kind=np.int64)
-        self._spread = Tiles(labels * BINS * WHOLE, grid=SLOWEST_HOUR, kind=np.int32)
+        self._lines = Tiles(2, ladder=LINES_LADDER)
+        """Levels and their sum (hundredths) by satellite and signal."""
+        self._spread = Tiles(ladder=SPREAD_LADDER)
+        """Levels by signal, elevation band and whole dB-Hz."""
+        self._tenths = Tiles()
+        """Levels of all signals by tenth of a dB-Hz."""
+        self._strongest = Tiles(2)
+        """Epochs with four satellites and more, and the sum of the four strongest levels (hundredths)."""
+        self._looks = Looks()
         self._series = Series({"mean": np.float32, "strongest4": np.float32}, most_rows=MOST_ROWS)
         self._answers: dict[tuple[Span, float], dict[str, Estimate]] = {}
 
     def update(self, batch: EpochBatch) -> None:
         """Take in closed epochs."""
-        rows = batch.signals
-        heard = np.flatnonzero(np.isfinite(rows.cn0_dbhz))
-        if not len(heard):
+        if not len(batch) or not len(batch.signals.epoch):
             return
         self._answers.clear()
-        epoch, satellite, signal = rows.epoch[heard], rows.satellite[heard], rows.signal[heard]
-        cn0_dbhz, elevation_deg = rows.cn0_dbhz[heard], rows.elevation_deg[heard]
-        minute = batch.minute[epoch]
-        label = label_numbers(satellite, signal)
-        thousandths = np.rint(cn0_dbhz.astype(np.float64) * 1000.0)
-        stated = np.isfinite(elevation_deg)
-        elevation_bin = np.full(len(heard), BINS, dtype=np.intp)
-        elevation_bin[stated] = np.clip(elevation_deg[stated] // BIN_DEG, 0, BINS - 1)
-        self._levels.add(minute, np.clip(np.rint(thousandths / 100.0), 0, TENTHS - 1).astype(np.intp))
-        self._counts.add(minute, label * (BINS + 1) + elevation_bin)
-        self._sums.add(minute, label, thousandths)
-        cell = label[stated] * BINS + elevation_bin[stated]
-        self._curve.add(minute[stated], cell, thousandths[stated])
-        whole = np.clip(np.rint(cn0_dbhz[stated]), 0, WHOLE - 1).astype(np.intp)
-        self._spread.add(minute[stated], cell * WHOLE + whole)
-        count = np.bincount(epoch, minlength=len(batch))
-        total = np.bincount(epoch, weights=thousandths, minlength=len(batch))
-        has = count > 0
+        grid = grid_of(batch)
+        self._looks.update(grid)
+        self._count(grid)
+        heard = (grid.level > 0).sum(axis=0)
+        total = grid.level.sum(axis=0, dtype=np.int64)
+        four = strongest_sums(grid)
+        enough = grid.tracked.sum(axis=0) >= STRONGEST
+        count, sums = grid.sums(np.stack([enough, np.where(enough, four, 0)]))
+        run = np.flatnonzero(count)
+        self._strongest.add(grid.minute[run], np.zeros(len(run), dtype=np.intp), count[run], sums[run])
+        has = heard > 0
         self._series.update(
-            batch.axis_ms[has], mean=total[has] / count[has] / 1000.0, strongest4=strongest_mean(grid_of(batch))[has]
+            batch.axis_ms[has],
+            mean=total[has] / heard[has] / PER_DB,
+            strongest4=np.where(enough, four / (STRONGEST * PER_DB), np.nan)[has],
         )
 
     def merge(self, other: Self) -> None:
         """Take in what ``other`` knows of a later part of the stream."""
         self._answers.clear()
-        for name in ("_levels", "_counts", "_sums", "_curve", "_spread", "_series"):
-            getattr(self, name).merge(getattr(other, name))
+        self._lines.merge(other._lines)
+        self._spread.merge(other._spread)
+        self._tenths.merge(other._tenths)
+        self._strongest.merge(other._strongest)
+        self._looks.merge(other._looks)
+        self._series.merge(other._series)
 
     def summary(self, span: Span = EVERYTHING, *, confidence: float = DEFAULT_CONFIDENCE) -> dict[str, Estimate]:
-        """Every quantity by name, and one of the family for each signal heard."""
+        """Every quantity by name, over whole minutes, and one of the family for each signal heard."""
         key = (span, confidence)
         if key not in self._answers:
+            if len(self._answers) > 8:
+                self._answers.clear()
             self._answers[key] = self._summarise(span, confidence)
         return dict(self._answers[key])
 
     def picture(self, span: Span = EVERYTHING) -> LevelPicture:
-        """Level against elevation, and level over time reduced to one elevation."""
-        labels = len(LABELS)
-        count = self._counts.total(span.from_ms, span.to_ms).reshape(labels, BINS + 1)
-        heard = np.flatnonzero(count.sum(axis=1))
-        by_bin = count[heard, :BINS]
-        total = self._curve.total(span.from_ms, span.to_ms).reshape(labels, BINS)[heard] / 1000.0
-        in_curve = self._bin_counts(span)[heard]
-        mean = _ratio(total, in_curve)
-        spread = self._spread.total(span.from_ms, span.to_ms).reshape(labels, BINS, WHOLE)[heard]
-        minute, level = self._common(span, heard, mean)
-        return LevelPicture(
-            signals=tuple(LABELS[i] for i in heard),
-            elevation_deg=(np.arange(BINS, dtype=np.float64) + 0.5) * BIN_DEG,
-            mean_dbhz=mean,
-            low_dbhz=_quantile(spread, 0.05),
-            high_dbhz=_quantile(spread, 0.95),
-            count=by_bin,
-            minute=minute,
-            level_dbhz=level,
+        """Level against elevation, satellite by satellite, and over time reduced to one elevation."""
+        column, counts = self._spread.total(span.from_ms, span.to_ms)
+        spread = np.zeros(len(LABELS) * (BANDS + 1) * DB_STEP, dtype=np.int64)
+        spread[column] = counts[:, 0]
+        return level_curve.picture(
+            self._lines.select(span.from_ms, span.to_ms),
+            spread.reshape(len(LABELS), BANDS + 1, DB_STEP)[:, :BANDS],
+            self._looks.within(span),
         )
 
-    def _bin_counts(self, span: Span) -> Ints:
-        """Levels behind the curve's sums, which are kept in rows of ten minutes."""
-        wide_ms = CURVE_MINUTES * 60_000
-        low = None if span.from_ms is None else span.from_ms // wide_ms * wide_ms
-        high = None if span.to_ms is None else -(-span.to_ms // wide_ms) * wide_ms
-        counts = self._counts.total(low, high).reshape(len(LABELS), BINS + 1)
-        return counts[:, :BINS]
+    def _count(self, grid: Grid) -> None:
+        """Count every level by signal, elevation, minute and whole dB; sums by line and minute; tenths over all."""
+        runs = len(grid.run)
+        heard = grid.sums(grid.level > 0)
+        line, at = np.nonzero(heard)
+        self._lines.add(grid.minute[at], grid.line[line], heard[line, at], grid.sums(grid.level)[line, at])
+        run = np.repeat(np.arange(runs), np.diff(grid.run, append=grid.epochs))
+        labels, label = np.unique(labels_of_lines(grid.line), return_inverse=True)
+        owner = np.searchsorted(grid.satellite, grid.line // SIGNAL_STEP)
+        band = np.minimum((elevations_deg(grid.direction) / BAND_DEG).astype(np.int64), BANDS - 1)
+        band = np.where(grid.direction >= 0, np.maximum(band, 0), BANDS)
+        whole = (grid.level + np.int16(PER_DB // 2)) // np.int16(PER_DB)
+        np.minimum(whole, np.int16(DB_STEP - 1), out=whole)
+        cell = band[owner]
+        cell += (label * (BANDS + 1))[:, None]
+        cell += run * (len(labels) * (BANDS + 1))
+        cell *= DB_STEP
+        cell += whole
+        counts = np.bincount(cell.ravel(), minlength=runs * len(labels) * (BANDS + 1) * DB_STEP)
+        # Level 0 means: not heard. Nothing is heard at less than half a dB-Hz.
+        counts[::DB_STEP] = 0
+        filled = np.flatnonzero(counts)
+        place, level = np.divmod(filled, DB_STEP)
+        at, place = np.divmod(place, len(labels) * (BANDS + 1))
+        which, band = np.divmod(place, BANDS + 1)
+        self._spread.add(grid.minute[at], (labels[which] * (BANDS + 1) + band) * DB_STEP + level, counts[filled])
+        self._count_tenths(grid, run)
 
-    def _common(self, span: Span, heard: Ints, curve: Floats) -> tuple[Ints, Floats]:
-        """What all satellites of a signal have in common, minute by minute, shape (signals, t).
-
-        A minute's mean level minus the mean of the curve at the elevations at which its satellites stood, put back on
-        the curve's value at 45-50 degrees (or its mean): satellites that rise and set do not move it.
-        """
-        minute, counts = self._counts.within(span.from_ms, span.to_ms)
-        _, sums = self._sums.within(span.from_ms, span.to_ms)
-        by_bin = counts.reshape(len(minute), len(LABELS), BINS + 1)[:, heard, :]
-        stated = by_bin[:, :, :BINS]
-        number = by_bin.sum(axis=2)
-        mean = _ratio(sums[:, heard] / 1000.0, number)
-        expected = _ratio((stated * np.nan_to_num(curve)).sum(axis=2), stated.sum(axis=2))
-        overall = _ratio((np.nan_to_num(curve) * stated.sum(axis=0)).sum(axis=1), stated.sum(axis=(0, 2)))
-        base = curve[:, REFERENCE_BIN] if len(heard) else np.empty(0)
-        base = np.where(np.isfinite(base), base, overall)
-        reduced = mean - expected + base
-        return minute, np.where(np.isfinite(reduced), reduced, mean).T
+    def _count_tenths(self, grid: Grid, run: npt.NDArray[np.intp]) -> None:
+        step = LOUDEST_TENTH + 1
+        tenth = np.minimum((grid.level + np.int16(PER_TENTH // 2)) // np.int16(PER_TENTH), LOUDEST_TENTH)
+        counts = np.bincount((tenth + run * step).ravel(), minlength=len(grid.run) * step)
+        counts[::step] = 0
+        filled = np.flatnonzero(counts)
+        at, tenth = np.divmod(filled, step)
+        self._tenths.add(grid.minute[at], tenth, counts[filled])
 
     def _summarise(self, span: Span, confidence: float) -> dict[str, Estimate]:
         answers = {quantity.name: NOTHING for quantity in self.QUANTITIES if not quantity.name.endswith("*")}
-        counts = self._counts.total(span.from_ms, span.to_ms).reshape(len(LABELS), BINS + 1).sum(axis=1)
-        if not counts.sum():
+        minute, line, values = self._lines.select(span.from_ms, span.to_ms)
+        if not len(minute):
             return answers
-        sums = self._sums.total(span.from_ms, span.to_ms)
-        levels = self._levels.total(span.from_ms, span.to_ms)
         chosen = self._series.within(span.from_ms, span.to_ms)
-        epoch_means = self._series["mean"].view(np.float32)[chosen]
-        total = int(counts.sum())
-        answers["cn0.mean_dbhz"] = _with_interval(float(sums.sum()) / total / 1000.0, epoch_means, confidence, total)
-        median = float(_quantile(levels[None, :], 0.5)[0]) / 10.0
-        answers["cn0.median_dbhz"] = _with_interval(median, epoch_means, confidence, total)
-        strongest = self._series["strongest4"].view(np.float32)[chosen]
-        strongest = strongest[np.isfinite(strongest)]
+        samples = self._series["mean"].view(np.float32)[chosen]
+        count, total = values.sum(axis=0).tolist()
+        answers["cn0.mean_dbhz"] = mean_estimate(samples, confidence, value=total / count / PER_DB, count=count)
+        tenth, counts = self._tenths.total(span.from_ms, span.to_ms)
+        median = quantile(tenth / 10.0, counts[:, 0], 0.5)
+        answers["cn0.median_dbhz"] = quantile_estimate(samples, 0.5, confidence, value=median)
+        _, strongest = self._strongest.total(span.from_ms, span.to_ms)
         if len(strongest):
-            mean = float(strongest.mean(dtype=np.float64))
-            answers["cn0.strongest4_mean_dbhz"] = _with_interval(mean, strongest, confidence, len(strongest))
-        _, minute_sums = self._sums.within(span.from_ms, span.to_ms)
-        _, minute_counts = self._counts.within(span.from_ms, span.to_ms)
-        by_label = minute_counts.reshape(len(minute_counts), len(LABELS), BINS + 1).sum(axis=2)
-        for i in np.flatnonzero(counts).tolist():
-            present = by_label[:, i] > 0
-            minutes = minute_sums[present, i] / by_label[present, i] / 1000.0
-            mean = float(sums[i]) / int(counts[i]) / 1000.0
-            answers[FAMILY + LABELS[i]] = _with_interval(mean, minutes, confidence, int(counts[i]))
+            epochs, total = strongest[0].tolist()
+            samples = self._series["strongest4"].view(np.float32)[chosen]
+            answers["cn0.strongest4_mean_dbhz"] = mean_estimate(
+                samples[np.isfinite(samples)], confidence, value=total / epochs / (STRONGEST * PER_DB), count=epochs
+            )
+        label = labels_of_lines(line)
+        minutes, which = np.unique(minute, return_inverse=True)
+        cell = label * len(minutes) + which
+        by_minute = [
+            np.bincount(cell, weights=measure, minlength=len(LABELS) * len(minutes)).reshape(len(LABELS), -1)
+            for measure in values.T
+        ]
+        for i in np.unique(label).tolist():
+            heard, sums = (measure[i] for measure in by_minute)
+            present = heard > 0
+            mean = float(sums.sum() / heard.sum() / PER_DB)
+            answers[FAMILY + LABELS[i]] = mean_estimate(
+                sums[present] / heard[present] / PER_DB, confidence, value=mean, count=int(heard.sum())
+            )
         return answers
-
-
-def _with_interval(value: float, samples: npt.NDArray[np.generic], confidence: float, count: int) -> Estimate:
-    """The value with the interval of the mean of evenly spaced samples of the same thing."""
-    numbers = samples.astype(np.float64)
-    error = long_run.mean_error(numbers)
-    if error is None:
-        still = len(numbers) >= long_run.FEWEST_SAMPLES and float(np.ptp(numbers)) == 0.0
-        return Estimate(value, (value, value) if still else None, confidence, count)
-    half = error.half_width(confidence)
-    return Estimate(value, (value - half, value + half), confidence, count)
-
-
-def _ratio(top: Floats, bottom: npt.NDArray[np.integer]) -> Floats:
-    """Division that gives NaN where the bottom is 0."""
-    result = np.full(np.broadcast_shapes(top.shape, bottom.shape), np.nan)
-    np.divide(top, bottom, out=result, where=bottom > 0)
-    return result
-
-
-def _quantile(histogram: Ints, share: float) -> Floats:
-    """Quantile of counts along the last axis, in bins, linear between order statistics (type 7); NaN where empty."""
-    total = histogram.sum(axis=-1)
-    heap = np.cumsum(histogram, axis=-1)
-    rank = np.maximum(total - 1, 0) * share
-    low, high = np.floor(rank), np.ceil(rank)
-    value = [np.argmax(heap > r[..., None], axis=-1).astype(np.float64) for r in (low, high)]
-    result = value[0] + (value[1] - value[0]) * (rank - low)
-    return np.where(total > 0, result, np.nan)

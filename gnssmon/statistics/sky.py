@@ -1,22 +1,23 @@
-"""The sky: where satellites passed, where they were heard, and how high the horizon stands.
-
-Strategy. ``looks`` keeps a row per satellite and minute; everything else, cells, horizon, tracks, is computed from the
-rows of a window.
-"""
+"""The sky: where satellites passed, where they were heard, and how high the horizon stands."""
 
 from __future__ import annotations
 
+import math
 from typing import ClassVar, Self
 
 import numpy as np
 import numpy.typing as npt
 
 from gnssmon.constellations import identity
+from gnssmon.constellations.systems import LETTERS
 from gnssmon.epochs.batch import EpochBatch
+from gnssmon.estimators.tiles import Tiles
+from gnssmon.estimators.uncertainty import share_interval
 from gnssmon.geodesy import directions
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity, exact
-from gnssmon.statistics.grid import CODES
-from gnssmon.statistics.looks import Looks
+from gnssmon.statistics.grid import CODES, grid_of
+from gnssmon.statistics.horizon import Horizon, horizon, passes
+from gnssmon.statistics.looks import Looks, Rows
 from gnssmon.statistics.pictures import (
     CELL_BLOCKED,
     CELL_MIXED,
@@ -30,24 +31,25 @@ from gnssmon.statistics.pictures import (
 from gnssmon.statistics.subject import EVERYTHING, Site, Span
 
 Floats = npt.NDArray[np.float64]
-Ints = npt.NDArray[np.int64]
+Flags = npt.NDArray[np.bool_]
 
-SECTORS = 36
-CELLS_ABOVE = "equal-area cells: T. Fuhrmann et al., GPS Solutions 19 (2015)"
-HORIZON = "likelihood of a step in the share of tracked passes over elevation; this program's own definition"
+CELLS = "263 equal-area cells; idea of congruent cells: T. Fuhrmann et al., GPS Solutions 19 (2015)"
+HORIZON = "likelihood of a step in the share heard over elevation; this program's own definition"
 
-LOWEST_HORIZON, HIGHEST_HORIZON = 0, 80
-TRACKED_BELOW, TRACKED_ABOVE = 0.05, 0.90
-"""Share of the time that a satellite is heard below and above the horizon; start values, common practice, no source."""
-NEIGHBOURS = 0.5
-"""Weight of a degree: neighbouring ones tell much the same."""
-PASS_MINUTES = 15
-"""Rows of one satellite further apart than this belong to different passes."""
-HALF = 0.5
+OPEN, BLOCKED = 0.75, 0.25
+"""A cell is open when satellites in it were heard at least so much of the time, blocked when less than this; between
+them it is mixed. Common practice, no source."""
 HIGH_DEG = 40.0
-"""A satellite above this is hidden by hardly anything."""
-FEWEST_DEGREES = 5
-"""Elevations that must have been looked at in a sector before a horizon is given."""
+"""A satellite that is silent even above this is hidden by nothing: it is switched off, or not one of the receiver's."""
+DEGREE_MICRO = 1e6
+BAND_DEG = 5.0
+BANDS = 18
+SETTLING_ROWS = 60.0
+"""Rows (minutes) after which a satellite's own level counts as much as what is known of satellites in general."""
+
+COVERED = 0.9
+"""Share of the reachable cells that a record should have crossed. Common practice, no source."""
+SHORTEST_FORECAST_S, LONGEST_FORECAST_S = 1800.0, 2 * 86_400.0
 
 ORBITS = {"G": (26_559_700.0, 55.0), "R": (25_508_000.0, 64.8), "E": (29_599_800.0, 56.0), "C": (27_906_000.0, 55.0)}
 """Nominal orbit radius (m) and inclination (deg): GPS SPS PS, GLONASS ICD, Galileo OS SDD, BeiDou ICD (MEO)."""
@@ -61,19 +63,31 @@ class Sky:
             name="sky.coverage_share",
             unit="share",
             meaning="Share of sky cells above the mask that any satellite crossed.",
-            source=CELLS_ABOVE,
+            source=CELLS,
         ),
         Quantity(
             name="sky.coverage_reachable_share",
             unit="share",
-            meaning="The same, of the cells that satellites of the systems heard can ever cross from this latitude.",
-            source=CELLS_ABOVE,
+            meaning="The same, of the cells that satellites of the systems seen can ever cross from this latitude.",
+            source=CELLS,
+        ),
+        Quantity(
+            name="sky.coverage_needed_s",
+            unit="s",
+            meaning=(
+                "Estimated further time until 90 % of the reachable cells above the mask are crossed; 0 when they are. "
+                "None within the first half hour, and where two more days would not do."
+            ),
+            source="1 - exp(-(t/a)^b) through the coverage at half the time and now; this program's own definition",
         ),
         Quantity(
             name="sky.obstructed_share",
             unit="share",
-            meaning="Share of the crossed cells above the mask in which satellites mostly had no signal.",
-            source=CELLS_ABOVE,
+            meaning=(
+                "Share of the crossed cells above the mask in which satellites were silent for most of the time. "
+                "No interval where the receiver lists no silent satellite at all: it might hide them."
+            ),
+            source=CELLS,
         ),
         Quantity(
             name="sky.mask_deg",
@@ -86,169 +100,174 @@ class Sky:
     def __init__(self, site: Site) -> None:
         self._site = site
         self._looks = Looks()
-        self._latitude_deg = np.nan
+        self._latitude = Tiles(2)
+        """Fixes and sum of their latitudes, millionths of a degree."""
+        self._read: tuple[Span, Rows, Horizon] | None = None
 
     def update(self, batch: EpochBatch) -> None:
         """Take in closed epochs."""
-        where = np.flatnonzero(batch.fixed_position)
-        if len(where):
-            self._latitude_deg = float(batch.latitude_deg[where[-1]])
-        self._looks.update(batch)
+        if not len(batch):
+            return
+        self._read = None
+        grid = grid_of(batch)
+        self._looks.update(grid)
+        fixed = batch.fixed_position
+        latitude = np.rint(np.where(fixed, batch.latitude_deg, 0.0) * DEGREE_MICRO)
+        count, total = grid.sums(np.stack([fixed, latitude]))
+        run = np.flatnonzero(count)
+        self._latitude.add(grid.minute[run], np.zeros(len(run), dtype=np.intp), count[run], total[run])
 
     def merge(self, other: Self) -> None:
         """Take in what ``other`` knows of a later part of the stream."""
-        if np.isfinite(other._latitude_deg):
-            self._latitude_deg = other._latitude_deg
+        self._read = None
         self._looks.merge(other._looks)
+        self._latitude.merge(other._latitude)
 
     def summary(self, span: Span = EVERYTHING, *, confidence: float = DEFAULT_CONFIDENCE) -> dict[str, Estimate]:
-        """Every quantity by name; shares are facts of what was seen."""
+        """Every quantity by name, over whole minutes."""
         answers = {quantity.name: NOTHING for quantity in self.QUANTITIES}
-        rows = self._within(span)
-        if not len(rows["minute"]):
+        rows, line = self._within(span)
+        if not len(rows):
             return answers
         state, seen = self._cells(rows)
-        _, middle = directions.cell_centres()
-        above = middle >= self._site.mask_deg
+        _, middle_deg = directions.cell_centres()
+        above = middle_deg >= self._site.mask_deg
         crossed = above & seen
         answers["sky.coverage_share"] = exact(float(crossed.sum() / above.sum()), int(above.sum()))
         reachable = above & (state != CELL_UNREACHABLE)
         if reachable.any():
             share = float((crossed & reachable).sum() / reachable.sum())
             answers["sky.coverage_reachable_share"] = exact(share, int(reachable.sum()))
+            needed_s = _needed_s(rows, reachable, share)
+            if needed_s is not None:
+                answers["sky.coverage_needed_s"] = Estimate(needed_s, samples=int(reachable.sum()))
         if crossed.any():
-            blocked = crossed & (state == CELL_BLOCKED)
-            answers["sky.obstructed_share"] = exact(float(blocked.sum() / crossed.sum()), int(crossed.sum()))
-        horizon, _, _ = self._horizon(rows)
-        if np.isfinite(horizon).any():
-            values = tuple(float(h) if np.isfinite(h) else None for h in horizon)
-            answers["sky.mask_deg"] = Estimate(values, samples=len(rows["minute"]))
+            share = float((crossed & (state == CELL_BLOCKED)).sum() / crossed.sum())
+            # Cells are not independent witnesses; passes nearly are.
+            witnesses = min(int(crossed.sum()), int(passes(rows).max()) + 1)
+            silence_is_told = bool((rows.tracked < rows.listed).any())
+            interval = share_interval(share, witnesses, confidence) if silence_is_told else None
+            answers["sky.obstructed_share"] = Estimate(share, interval, confidence, int(crossed.sum()), witnesses)
+        if np.isfinite(line.median).any():
+            values = tuple(float(value) if np.isfinite(value) else None for value in line.median)
+            answers["sky.mask_deg"] = Estimate(values, samples=len(rows))
         return answers
 
     def picture(self, span: Span = EVERYTHING) -> SkyPicture:
         """Cells with their state, horizon, tracks."""
-        rows = self._within(span)
+        rows, line = self._within(span)
         state, _ = self._cells(rows)
-        horizon, low, high = self._horizon(rows)
-        edges = directions.cell_edges()
+        azimuth_from, azimuth_to, elevation_from, elevation_to = directions.cell_edges()
         return SkyPicture(
-            azimuth_from_deg=edges[0],
-            azimuth_to_deg=edges[1],
-            elevation_from_deg=edges[2],
-            elevation_to_deg=edges[3],
+            azimuth_from_deg=azimuth_from,
+            azimuth_to_deg=azimuth_to,
+            elevation_from_deg=elevation_from,
+            elevation_to_deg=elevation_to,
             state=state,
             residual_db=_residuals(rows),
-            horizon_deg=horizon,
-            horizon_low_deg=low,
-            horizon_high_deg=high,
+            horizon_deg=line.median,
+            horizon_low_deg=line.low,
+            horizon_high_deg=line.high,
             tracks=_tracks(rows),
             mask_deg=self._site.mask_deg,
         )
 
-    def _within(self, span: Span) -> dict[str, npt.NDArray[np.generic]]:
-        rows = self._looks.within(span)
-        silent = _never_heard(rows)
-        return {name: column[~silent] for name, column in rows.items()} if silent.any() else rows
+    def _within(self, span: Span) -> tuple[Rows, Horizon]:
+        if self._read is None or self._read[0] != span:
+            rows = self._looks.within(span)
+            rows = rows.part(~_never_heard(rows))
+            self._read = span, rows, horizon(rows)
+        return self._read[1:]
 
-    def _cells(self, rows: dict[str, npt.NDArray[np.generic]]) -> tuple[npt.NDArray[np.uint8], npt.NDArray[np.bool_]]:
+    def _cells(self, rows: Rows) -> tuple[npt.NDArray[np.uint8], Flags]:
         """State of each cell, and whether any satellite crossed it."""
-        cell = directions.cell_of(rows["azimuth_deg"].astype(np.float64), rows["elevation_deg"].astype(np.float64))
-        listed = np.bincount(cell, weights=rows["listed"].astype(np.float64), minlength=directions.CELLS)
-        tracked = np.bincount(cell, weights=rows["tracked"].astype(np.float64), minlength=directions.CELLS)
+        cell = directions.cell_of(rows.azimuth_deg, rows.elevation_deg)
+        listed = np.bincount(cell, weights=rows.listed, minlength=directions.CELLS)
+        tracked = np.bincount(cell, weights=rows.tracked, minlength=directions.CELLS)
         seen = listed > 0
         share = np.divide(tracked, listed, out=np.zeros(directions.CELLS), where=seen)
         state = np.full(directions.CELLS, CELL_UNKNOWN, dtype=np.uint8)
         state[seen] = CELL_MIXED
-        state[seen & (share >= 1.0 - HALF / 2)] = CELL_OPEN
-        state[seen & (share < HALF / 2)] = CELL_BLOCKED
-        if np.isfinite(self._latitude_deg):
+        state[seen & (share >= OPEN)] = CELL_OPEN
+        state[seen & (share < BLOCKED)] = CELL_BLOCKED
+        _, latitude = self._latitude.total()
+        if len(latitude):
+            latitude_deg = float(latitude[0, 1] / latitude[0, 0] / DEGREE_MICRO)
             reach = np.zeros(directions.CELLS, dtype=bool)
-            heard = {identity.label(code)[0] for code in np.unique(rows["satellite"].astype(np.int64)).tolist()}
-            for letter in heard & ORBITS.keys():
-                reach |= directions.reachable(self._latitude_deg, *ORBITS[letter])
-            state[~seen & ~reach] = CELL_UNREACHABLE
+            for system in np.unique(rows.satellite // identity.SYSTEM_STEP).tolist():
+                if LETTERS[system] in ORBITS:
+                    reach |= directions.reachable(latitude_deg, *ORBITS[LETTERS[system]])
+            if reach.any():
+                state[~seen & ~reach] = CELL_UNREACHABLE
         return state, seen
 
-    def _horizon(self, rows: dict[str, npt.NDArray[np.generic]]) -> tuple[Floats, Floats, Floats]:
-        """Median and 5 % to 95 % of the horizon's posterior per sector of 10 degrees, shape (36,); NaN unseen."""
-        result = np.full((3, SECTORS), np.nan)
-        if not len(rows["minute"]):
-            return result[0], result[1], result[2]
-        elevation = np.clip(rows["elevation_deg"].astype(np.int64), 0, 90)
-        sector = rows["azimuth_deg"].astype(np.int64) // (360 // SECTORS)
-        passes = rows["minute"].view(np.int64) // PASS_MINUTES
-        # One unit: a satellite's pass through one degree of elevation in a sector.
-        unit = ((passes * CODES + rows["satellite"].astype(np.int64)) * SECTORS + sector) * 91 + elevation
-        keys, which = np.unique(unit, return_inverse=True)
-        listed = np.bincount(which, weights=rows["listed"].astype(np.float64))
-        tracked = np.bincount(which, weights=rows["tracked"].astype(np.float64))
-        share = tracked / np.maximum(listed, 1.0)
-        degree, place = keys % 91, keys // 91 % SECTORS
-        heard = np.zeros((SECTORS, 91))
-        missed = np.zeros((SECTORS, 91))
-        np.add.at(heard, (place, degree), share)
-        np.add.at(missed, (place, degree), 1.0 - share)
-        candidates = np.arange(LOWEST_HORIZON, HIGHEST_HORIZON + 1)
-        above = np.arange(91)[None, :] >= candidates[:, None]
-        gain = heard * np.log(TRACKED_ABOVE) + missed * np.log(1.0 - TRACKED_ABOVE)
-        loss = heard * np.log(TRACKED_BELOW) + missed * np.log(1.0 - TRACKED_BELOW)
-        likelihood = NEIGHBOURS * (gain @ above.T + loss @ ~above.T)
-        weight = np.exp(likelihood - likelihood.max(axis=1, keepdims=True))
-        heap = np.cumsum(weight / weight.sum(axis=1, keepdims=True), axis=1)
-        enough = ((heard + missed) > 0).sum(axis=1) >= FEWEST_DEGREES
-        for i, share_below in enumerate((0.5, 0.05, 0.95)):
-            result[i, enough] = candidates[(heap[enough] >= share_below).argmax(axis=1)]
-        return result[0], result[1], result[2]
 
-
-def _never_heard(rows: dict[str, npt.NDArray[np.generic]]) -> npt.NDArray[np.bool_]:
-    """Rows of satellites that stood high in the sky and were never heard at all: switched off, unhealthy, or not
-    received by this receiver. They say nothing about the site."""
-    satellite = rows["satellite"].astype(np.int64)
-    heard = np.bincount(satellite, weights=rows["tracked"].astype(np.float64), minlength=CODES)
-    highest = np.full(CODES, -90.0)
-    np.maximum.at(highest, satellite, rows["elevation_deg"].astype(np.float64))
-    silent: npt.NDArray[np.bool_] = ((heard == 0) & (highest >= HIGH_DEG))[satellite]
+def _never_heard(rows: Rows) -> Flags:
+    """Rows of satellites that stood high in the sky and were never heard: they say nothing about the site."""
+    heard = np.bincount(rows.satellite, weights=rows.tracked, minlength=CODES)
+    high = np.bincount(rows.satellite, weights=rows.elevation_deg >= HIGH_DEG, minlength=CODES)
+    silent: Flags = ((heard == 0) & (high > 0))[rows.satellite]
     return silent
 
 
-def _residuals(rows: dict[str, npt.NDArray[np.generic]]) -> Floats:
-    """Mean level minus the mean at the same elevation (5-degree bins), per cell, dB; NaN unknown."""
-    cn0 = rows["cn0_dbhz"].astype(np.float64)
-    heard = np.isfinite(cn0)
-    if not heard.any():
-        return np.full(directions.CELLS, np.nan)
-    elevation = rows["elevation_deg"].astype(np.float64)[heard]
-    level = cn0[heard]
-    band = np.clip(elevation // 5, 0, 17).astype(np.intp)
-    count = np.bincount(band, minlength=18)
-    mean = np.bincount(band, weights=level, minlength=18) / np.maximum(count, 1)
-    cell = directions.cell_of(rows["azimuth_deg"].astype(np.float64)[heard], elevation)
-    number = np.bincount(cell, minlength=directions.CELLS)
-    total = np.bincount(cell, weights=level - mean[band], minlength=directions.CELLS)
+def _needed_s(rows: Rows, reachable: Flags, share: float) -> float | None:
+    """Further time until ``COVERED`` of the reachable cells are crossed; None: cannot be told."""
+    if share >= COVERED:
+        return 0.0
+    first = int(rows.minute[0])
+    lasted_s = float(rows.minute[-1] + 1 - first) * 60.0
+    if lasted_s < SHORTEST_FORECAST_S:
+        return None
+    cell = directions.cell_of(rows.azimuth_deg, rows.elevation_deg)
+    early = np.zeros(directions.CELLS, dtype=bool)
+    early[cell[(rows.minute - first) * 60.0 < lasted_s / 2.0]] = True
+    before = float((early & reachable).sum() / reachable.sum())
+    if not 0.0 < before < share:
+        return None
+    missing = math.log1p(-share)
+    steepness = math.log(missing / math.log1p(-before)) / math.log(2.0)
+    total_s = lasted_s * (math.log1p(-COVERED) / missing) ** (1.0 / steepness)
+    return total_s - lasted_s if total_s - lasted_s <= LONGEST_FORECAST_S else None
+
+
+def _residuals(rows: Rows) -> Floats:
+    """Mean level against that of satellites at the same elevation, per cell, dB; NaN unknown.
+
+    A satellite that is strong or weak wherever it stands is first brought to the others' level.
+    """
     result = np.full(directions.CELLS, np.nan)
-    np.divide(total, number, out=result, where=number > 0)
+    heard = rows.part(np.isfinite(rows.level_dbhz))
+    if not len(heard):
+        return result
+    band = np.clip(heard.elevation_deg // BAND_DEG, 0, BANDS - 1).astype(np.intp)
+    number = np.bincount(heard.satellite, minlength=CODES)
+    own_db = np.zeros(CODES)
+    for _ in range(3):
+        level = heard.level_dbhz - own_db[heard.satellite]
+        curve = np.bincount(band, weights=level, minlength=BANDS) / np.maximum(np.bincount(band, minlength=BANDS), 1)
+        own_db = np.bincount(heard.satellite, weights=heard.level_dbhz - curve[band], minlength=CODES) / (
+            number + SETTLING_ROWS
+        )
+    residual = heard.level_dbhz - curve[band] - own_db[heard.satellite]
+    cell = directions.cell_of(heard.azimuth_deg, heard.elevation_deg)
+    count = np.bincount(cell, minlength=directions.CELLS)
+    np.divide(np.bincount(cell, weights=residual, minlength=directions.CELLS), count, out=result, where=count > 0)
     return result
 
 
-def _tracks(rows: dict[str, npt.NDArray[np.generic]]) -> tuple[Track, ...]:
+def _tracks(rows: Rows) -> tuple[Track, ...]:
     """Each satellite's way over the sky, thinned evenly to MOST_POINTS in all."""
-    if not len(rows["minute"]):
+    if not len(rows):
         return ()
-    every = max(1, -(-len(rows["minute"]) // MOST_POINTS))
-    minute = rows["minute"].view(np.int64)
-    kept = minute % every == 0
-    satellite = rows["satellite"].astype(np.int64)[kept]
-    order = np.argsort(satellite, kind="stable")
-    codes, first = np.unique(satellite[order], return_index=True)
-    tracks = []
-    for code, part in zip(codes.tolist(), np.split(order, first[1:]), strict=True):
-        tracks.append(
-            Track(
-                satellite=identity.label(code),
-                azimuth_deg=rows["azimuth_deg"][kept][part].astype(np.float64),
-                elevation_deg=rows["elevation_deg"][kept][part].astype(np.float64),
-                tracked=rows["tracked"][kept][part] > 0,
-            )
+    rows = rows.part(rows.minute % max(1, -(-len(rows) // MOST_POINTS)) == 0) if len(rows) > MOST_POINTS else rows
+    order = np.argsort(rows.satellite, kind="stable")
+    codes, first = np.unique(rows.satellite[order], return_index=True)
+    return tuple(
+        Track(
+            satellite=identity.label(code),
+            azimuth_deg=rows.azimuth_deg[part],
+            elevation_deg=rows.elevation_deg[part],
+            tracked=rows.tracked[part] > 0,
         )
-    return tuple(tracks)
+        for code, part in zip(codes.tolist(), np.split(order, first[1:]), strict=True)
+    )
