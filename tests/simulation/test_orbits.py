@@ -114,7 +114,7 @@ def test_azimuth_and_elevation_against_skyfield(latitude, longitude, height):
 
 
 def test_sidereal_angle_of_an_almanac_example():
-    """Greenwich mean sidereal time on 1987-04-10 at 0h UT is 13h 10m 46.3668s (Meeus, Astronomical Algorithms, ex. 12.a)."""
+    """Greenwich mean sidereal time on 1987-04-10 at 0h UT is 13h 10m 46.3668s (Meeus, example 12.a)."""
     angle = math.degrees(float(motion.sidereal_angle(545_011_200.0)))
 
     assert angle / 15.0 == pytest.approx(13 + 10 / 60 + 46.3668 / 3600, abs=1e-6)
@@ -213,7 +213,7 @@ def test_hole_about_the_pole(latitude, pole_azimuth, hole_deg):
 
 
 def test_dilution_of_precision_of_the_reference_sheet():
-    """One satellite overhead, three at 19.47 degrees 120 degrees apart: P 2.12132, H 1.22474, V 1.73205 (methods, 18)."""
+    """One satellite overhead, three at 19.47 degrees 120 degrees apart: P 2.12132, H 1.22474, V 1.73205 (sheet, 18)."""
     edop, ndop, vdop = dops(np.array([0.0, 0, 120, 240]), np.array([90.0, 19.4712206, 19.4712206, 19.4712206]))
 
     assert math.hypot(edop, ndop) == pytest.approx(1.22474, abs=1e-5)

@@ -46,7 +46,7 @@ def test_carriers_and_fringe_periods_per_band():
         period = np.diff(sine[rising]).mean()
 
         assert period == pytest.approx(299.792458 / carrier_mhz / (2 * 2.0), rel=5e-3)
-    assert 299.792458 / 1575.42 / 4 == pytest.approx(0.04757, abs=5e-6)
+    assert pytest.approx(0.04757, abs=5e-6) == 299.792458 / 1575.42 / 4
 
 
 def test_strength_of_a_reflection():
@@ -72,7 +72,7 @@ def test_level_overhead_is_that_of_the_link_budget():
     """Over many satellites overhead the mean on the first band is the budget's, to the spread's uncertainty."""
     scene = scenario()
     made, _, out = levels(scene, elevation_deg=90.0)
-    first = [i for i, c in enumerate(made.channels) if c.label == "G1"][0]
+    first = next(i for i, c in enumerate(made.channels) if c.label == "G1")
     per_satellite = out[:, :, first].mean(axis=0)
     per_satellite = per_satellite[np.isfinite(per_satellite)]
 
@@ -116,7 +116,7 @@ def test_interference_falls_on_its_bands_alone():
 
 
 def test_shapes_of_an_event():
-    """Step, ramp, passing and flicker: within 0 and 1, nothing outside their time, and the mean each is said to have."""
+    """Step, ramp, passing and flicker: within 0 and 1, nothing outside their time, and the mean of each shape."""
     time_s = np.arange(0.0, 4000.0)
     for shape, mean in (("step", 1.0), ("ramp", 0.5), ("passing", 0.18 * math.sqrt(2 * math.pi)), ("flicker", 0.375)):
         event = f"[[event]]\nkind = 'cable_loss'\nat = '500s'\nfor = '3000s'\nshape = '{shape}'\n"
@@ -150,7 +150,7 @@ def test_repeated_event():
 def test_repeater_makes_levels_equal():
     """Ten satellites between 8 and 85 degrees have nearly one level (diagnosis sheet, section 1, 19)."""
     scene = scenario("[[event]]\nkind = 'repeater'\nat = '0s'\n")
-    made, elevation, out = levels(scene)
+    _, elevation, out = levels(scene)
     first = out[:, :, 0].mean(axis=0)
     good = np.isfinite(first)
 
