@@ -1,4 +1,8 @@
-"""Canvas: the one widget that paints a grid, and of it only what has changed."""
+"""Canvas: paints a grid, and of it only what has changed.
+
+The screen library repaints a changed stretch of a row from the left edge of the widget in which it lies. So the
+canvas is cut into narrow upright slices, each a widget: a number that changes costs a few cells, not half a row.
+"""
 
 from __future__ import annotations
 
@@ -6,6 +10,8 @@ from typing import ClassVar
 
 from rich.segment import Segment
 from rich.style import Style
+from textual.app import ComposeResult
+from textual.containers import Horizontal
 from textual.geometry import Region
 from textual.message import Message
 from textual.strip import Strip
@@ -13,14 +19,12 @@ from textual.widget import Widget
 
 from gnssmon.dashboard.drawing import TONES, Grid
 
-JOINED_CELLS = 8
-"""Two changes on a line no farther apart are painted as one: moving the cursor costs as many bytes."""
+SLICES = 16
+"""At 80 columns five cells each: narrower ones cost more in moves of the cursor than they save."""
 
 
-class Canvas(Widget):
+class Canvas(Horizontal):
     """Shows the grid that it was last given."""
-
-    COMPONENT_CLASSES: ClassVar[set[str]] = {f"tone-{tone}" for tone in TONES if tone}
 
     class Resized(Message):
         """There are more or fewer cells now."""
@@ -28,33 +32,56 @@ class Canvas(Widget):
     def __init__(self) -> None:
         super().__init__()
         self._grid: Grid | None = None
-        self._styles: dict[str, Style] = {}
+        self._slices = [Slice(self) for _ in range(SLICES)]
+
+    def compose(self) -> ComposeResult:
+        yield from self._slices
+
+    def on_resize(self) -> None:
+        self.post_message(self.Resized())
+
+    @property
+    def grid(self) -> Grid | None:
+        """What is on it."""
+        return self._grid
 
     def show(self, grid: Grid) -> None:
         """Paint another grid; cells that did not change stay as they are."""
         old, self._grid = self._grid, grid
-        if old is None or (old.width, old.height) != (grid.width, grid.height):
-            self.refresh()
-            return
-        regions = changes(old, grid)
-        if regions:
-            self.refresh(*regions)
-
-    def on_resize(self) -> None:
-        self.post_message(self.Resized())
+        for part in self._slices:
+            first, width = part.place
+            if old is None or (old.width, old.height) != (grid.width, grid.height):
+                part.refresh()
+            elif regions := changes(old, grid, first, first + width):
+                part.refresh(*regions)
 
     def text(self) -> str:
         """What is on it, as text."""
         return "\n".join(line.rstrip() for line in self._grid.lines()) if self._grid is not None else ""
 
+
+class Slice(Widget):
+    """Some columns of a canvas."""
+
+    COMPONENT_CLASSES: ClassVar[set[str]] = {f"tone-{tone}" for tone in TONES if tone}
+
+    def __init__(self, canvas: Canvas) -> None:
+        super().__init__()
+        self._canvas = canvas
+        self._styles: dict[str, Style] = {}
+
+    @property
+    def place(self) -> tuple[int, int]:
+        """First column on the canvas, and how many."""
+        return self.region.x - self._canvas.region.x, self.size.width
+
     def render_line(self, y: int) -> Strip:
         """Row y for the compositor."""
-        base = self.rich_style
-        grid = self._grid
+        grid, (first, width) = self._canvas.grid, self.place
         if grid is None or y >= grid.height:
-            return Strip.blank(self.size.width, base)
-        segments = [Segment(text, self._style(tone)) for text, tone in grid.runs(y)]
-        return Strip(segments, grid.width).adjust_cell_length(self.size.width, base)
+            return Strip.blank(width, self._style(""))
+        segments = [Segment(text, self._style(tone)) for text, tone in grid.runs(y, first, first + width)]
+        return Strip(segments).adjust_cell_length(width, self._style(""))
 
     def notify_style_update(self) -> None:
         """The theme has changed."""
@@ -65,26 +92,25 @@ class Canvas(Widget):
         style = self._styles.get(tone)
         if style is None:
             style = self.get_component_rich_style(f"tone-{tone}") if tone else self.rich_style
+            if self.app.current_theme.ansi:
+                style = _bare(style)
             self._styles[tone] = style
         return style
 
 
-def changes(old: Grid, new: Grid) -> list[Region]:
-    """Where two grids of one size differ, as stretches of single rows."""
-    regions: list[Region] = []
+def _bare(style: Style) -> Style:
+    """Without the terminal's own colours: what it shows anyway need not be asked for."""
+    color = None if style.color is None or style.color.is_default else style.color
+    return Style(color=color, bold=style.bold or None, dim=style.dim or None, reverse=style.reverse or None)
+
+
+def changes(old: Grid, new: Grid, first: int, last: int) -> list[Region]:
+    """Where two grids of one size differ between two columns: at most one stretch a row, counted from ``first``."""
+    regions = []
     for y in range(new.height):
         rows, tones, old_rows, old_tones = new.rows[y], new.tones[y], old.rows[y], old.tones[y]
-        if rows == old_rows and tones == old_tones:
+        if rows[first:last] == old_rows[first:last] and tones[first:last] == old_tones[first:last]:
             continue
-        start = end = -1
-        for x in range(new.width):
-            if rows[x] == old_rows[x] and tones[x] == old_tones[x]:
-                continue
-            if start >= 0 and x - end > JOINED_CELLS:
-                regions.append(Region(start, y, end - start, 1))
-                start = x
-            elif start < 0:
-                start = x
-            end = x + 1
-        regions.append(Region(start, y, end - start, 1))
+        differing = [x for x in range(first, last) if rows[x] != old_rows[x] or tones[x] != old_tones[x]]
+        regions.append(Region(differing[0] - first, y, differing[-1] + 1 - differing[0], 1))
     return regions

@@ -124,12 +124,12 @@ class Grid:
         """The characters alone, a string a row."""
         return ["".join(row) for row in self.rows]
 
-    def runs(self, y: int) -> Iterator[tuple[str, str]]:
-        """Row y as stretches of equal tone: text and the tone's name."""
+    def runs(self, y: int, first: int = 0, last: int | None = None) -> Iterator[tuple[str, str]]:
+        """Row y, from a column up to another, as stretches of equal tone: text and the tone's name."""
         row, tones = self.rows[y], self.tones[y]
-        start = 0
-        for x in range(1, self.width + 1):
-            if x == self.width or tones[x] != tones[start]:
+        start, last = first, self.width if last is None else min(last, self.width)
+        for x in range(first + 1, last + 1):
+            if x == last or tones[x] != tones[start]:
                 yield "".join(row[start:x]), TONES[tones[start]]
                 start = x
 

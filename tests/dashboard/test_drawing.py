@@ -132,8 +132,15 @@ def test_changes_cover_exactly_what_differs(
     def differs(x: int, y: int) -> bool:
         return (old.rows[y][x], old.tones[y][x]) != (new.rows[y][x], new.tones[y][x])
 
-    regions = changes(old, new)
-    covered = {(x, r.y) for r in regions for x in range(r.x, r.right)}
+    covered = set()
+    for first, last in ((0, 7), (7, 20), (20, 30)):
+        regions = changes(old, new, first, last)
+        assert len({r.y for r in regions}) == len(regions)
+        for r in regions:
+            assert first <= first + r.x < first + r.right <= last
+            assert r.height == 1
+            assert differs(first + r.x, r.y)
+            assert differs(first + r.right - 1, r.y)
+            covered |= {(first + x, r.y) for x in range(r.x, r.right)}
+        assert changes(new, new, first, last) == []
     assert {(x, y) for y in range(6) for x in range(30) if differs(x, y)} <= covered
-    assert all(differs(r.x, r.y) and differs(r.right - 1, r.y) and r.height == 1 for r in regions)
-    assert changes(new, new) == []
