@@ -8,7 +8,7 @@ from typing import Literal
 import numpy as np
 import numpy.typing as npt
 
-from gnssmon.configuration import Duration, nearest
+from gnssmon.configuration import Duration
 from gnssmon.constellations.systems import SIGNALS
 from gnssmon.errors import ConfigurationError
 from gnssmon.printable import printable
@@ -37,7 +37,7 @@ PASSING_WIDTH = 0.18
 def known_label(label: str) -> None:
     """Raise ConfigurationError for a label that no simulated signal has."""
     if label not in LABELS:
-        raise ConfigurationError(f"signal '{printable(label, 20)}' is not simulated; nearest: {nearest(label, LABELS)}")
+        raise ConfigurationError(f"signal '{printable(label, 20)}' is not simulated; known: {', '.join(LABELS)}")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
