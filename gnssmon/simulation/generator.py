@@ -126,7 +126,7 @@ class Generator:
             for i, time_s in enumerate(times.tolist()):
                 fix = self._fixing.step(
                     time_s,
-                    told[i].used,
+                    told[i].used if math.hypot(*told[i].dops) <= self._scenario.receiver.pdop_mask else 0,
                     powered=not state.on("power_cycle", i),
                     blocked=state.on("no_fix", i),
                     corrections=not state.on("no_corrections", i),

@@ -126,6 +126,8 @@ class ReceiverTruth:
     """Signals below this are lost."""
     use_dbhz: float = 28.0
     """Satellites whose main signal is below this are not used."""
+    pdop_mask: float = 20.0
+    """With a worse geometry the receiver gives no position."""
     time_to_first_fix_s: Duration = field(default=0.0, metadata={"key": "time_to_first_fix"})
     """After power-up, from cold; 0: the run begins with a fix."""
     reacquisition_s: Duration = field(default=2.0, metadata={"key": "reacquisition"})
