@@ -190,7 +190,7 @@ def _behind_dops(lines: _Lines) -> npt.NDArray[np.int64]:
     first = _is_hex_digit(part, part.count - 2)
     pointed = [_has_point(part, part.count - back) for back in (2, 3, 4)]
     one = last & pointed[0]
-    one &= (part.count != usual) | ~pointed[2]
+    one &= (part.count != usual) | (pointed[1] & pointed[2])
     two = (part.count == usual + 2) & last & first & pointed[1]
     behind[odd] = np.where(two, 2, one.astype(np.int64))
     return behind

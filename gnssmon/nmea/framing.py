@@ -109,7 +109,7 @@ class Framer:
         lost = failed | ~(complete | plain)
         lost_bytes = int((found.end[lost] - found.start[lost] + 1 + 3 * failed[lost]).sum())
         inside = int((tail - start + 1).sum())
-        self.tally.non_nmea_bytes += max(0, len(lines.data) - inside - lost_bytes - found.line_ends - around)
+        self.tally.non_nmea_bytes += len(lines.data) - inside - lost_bytes - found.line_ends - around
         self._count(found.address[accepted], int(unverified.sum()))
         sequence = np.arange(self._sequence, self._sequence + len(accepted), dtype=np.int64)
         self._sequence += len(accepted)

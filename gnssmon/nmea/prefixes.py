@@ -55,6 +55,8 @@ def read_surroundings(
         begin = int(sentences.begin[i])
         text = data[max(int(before[i]), begin - NEAR) : begin]
         text = text[max(text.rfind(b"\n"), text.rfind(b"\r")) + 1 :]
+        if b"$" in text or b"!" in text:
+            continue  # a torn sentence, which is counted as one
         stamp_s, used = _before(text)
         recognised += used
         if stamp_s is not None:
