@@ -106,8 +106,8 @@ def _elevations(minute: Ints, satellite: Ints, looks: Rows) -> Floats:
     distinct = wanted[first]
     known = (looks.minute << 32) | looks.satellite
     at = np.minimum(np.searchsorted(known, distinct), len(known) - 1)
-    result = np.where(known[at] == distinct, looks.elevation_deg[at], np.nan)[np.cumsum(first) - 1]
-    return result
+    found: Floats = np.where(known[at] == distinct, looks.elevation_deg[at], np.nan)
+    return found[np.cumsum(first) - 1]
 
 
 def _band(elevation_deg: Floats) -> npt.NDArray[np.intp]:
