@@ -19,7 +19,7 @@ from gnssmon.clocks import SystemClock
 from gnssmon.errors import ConfigurationError, OutputError
 from gnssmon.printable import printable
 from gnssmon.simulation.generator import Generator
-from gnssmon.simulation.scenario import load_scenario, scenario_names
+from gnssmon.simulation.scenario import load_scenario, scenario_names, scenario_text
 
 Write = Callable[[bytes], None]
 
@@ -35,6 +35,7 @@ ACCEPT_S = 0.2
 @click.command(epilog="Example: gnssmon simulate bad_connector --to practice.nmea --duration 2h --truth truth.json")
 @click.argument("scenario", required=False)
 @click.option("--list", "list_", is_flag=True, help="Print the scenarios, a line each.")
+@click.option("--show", is_flag=True, help="Print the scenario's file, to copy and edit.")
 @click.option("--to", metavar="FILE|-", help="Write to a file, or - for standard output (the default).")
 @click.option("--listen", type=click.IntRange(1, 65535), metavar="PORT", help="Serve over TCP on this computer only.")
 @click.option("--pty", is_flag=True, help="Open a pseudo-terminal and print its name: a serial port to practise with.")
@@ -47,6 +48,7 @@ ACCEPT_S = 0.2
 def command(
     scenario: str | None,
     list_: bool,
+    show: bool,
     to: str | None,
     listen: int | None,
     pty: bool,
@@ -62,6 +64,9 @@ def command(
         return 0
     if scenario is None:
         raise click.UsageError("name a scenario, or see them all: gnssmon simulate --list")
+    if show:
+        click.echo(scenario_text(scenario), nl=False)
+        return 0
     if sum((to is not None, listen is not None, pty)) > 1:
         raise click.UsageError("--to, --listen and --pty exclude each other")
     rate = _rate(pace, live=listen is not None or pty)

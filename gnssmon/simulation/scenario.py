@@ -12,7 +12,7 @@ from importlib import resources
 from pathlib import Path
 from typing import Annotated, Literal
 
-from gnssmon.configuration import Duration, load, nearest
+from gnssmon.configuration import Duration, contents, load, nearest
 from gnssmon.errors import ConfigurationError
 from gnssmon.printable import printable
 from gnssmon.simulation.happenings import Event, known_label
@@ -226,16 +226,21 @@ def scenario_names() -> tuple[str, ...]:
     return tuple(sorted(name.removesuffix(".toml") for name in found if name.endswith(".toml")))
 
 
-def load_scenario(name_or_path: str) -> Scenario:
-    """A scenario by name, or from a TOML file. Raises ConfigurationError."""
+def scenario_text(name_or_path: str) -> str:
+    """The TOML of a scenario by name, or of a file. Raises ConfigurationError."""
     if name_or_path in scenario_names():
-        text = (resources.files("gnssmon.simulation") / "scenarios" / f"{name_or_path}.toml").read_text("utf-8")
-        scenario = load(Scenario, text, name=f"scenario '{name_or_path}'")
-    elif (path := Path(name_or_path)).is_file():
-        scenario = load(Scenario, path)
-    else:
+        return (resources.files("gnssmon.simulation") / "scenarios" / f"{name_or_path}.toml").read_text("utf-8")
+    path = Path(name_or_path)
+    if not path.is_file():
         raise ConfigurationError(
             f"there is no scenario and no file '{printable(name_or_path, 100)}'; nearest scenario: "
             f"{nearest(name_or_path, scenario_names())}; all: gnssmon simulate --list"
         )
+    return contents(path)
+
+
+def load_scenario(name_or_path: str) -> Scenario:
+    """A scenario by name, or from a TOML file. Raises ConfigurationError."""
+    shown = f"scenario '{name_or_path}'" if name_or_path in scenario_names() else name_or_path
+    scenario = load(Scenario, scenario_text(name_or_path), name=shown)
     return dataclasses.replace(scenario, name=scenario.name or Path(name_or_path).stem)

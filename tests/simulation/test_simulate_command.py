@@ -13,7 +13,7 @@ from pathlib import Path
 import pytest
 
 from gnssmon.simulation.generator import generate
-from gnssmon.simulation.scenario import load_scenario, scenario_names
+from gnssmon.simulation.scenario import load_scenario, scenario_names, scenario_text
 
 ROOT = Path(__file__).parents[2]
 
@@ -43,6 +43,15 @@ def test_list():
     assert code == 0
     assert [line.split()[0] for line in listed] == list(scenario_names())
     assert max(map(len, listed)) <= 80
+
+
+def test_show():
+    """A scenario's file is printed as it stands, comments and all: to copy, edit and run."""
+    code, out, _ = run("--show", "bad_connector")
+
+    assert code == 0
+    assert out.decode() == scenario_text("bad_connector")
+    assert out.startswith(b"# ")
 
 
 def test_file_and_truth(tmp_path):
