@@ -21,7 +21,7 @@ if TYPE_CHECKING:
     from gnssmon.recording.recorder import Recorder
     from gnssmon.replay.index import Index
 
-THIN_PACE_S = 2.0
+THIN_PACE_S = 3.0
 """Between two pictures on a slow line."""
 
 
@@ -29,7 +29,7 @@ def screen_options(command: Callable[..., Any]) -> Callable[..., Any]:
     """Add ``--plain`` and ``--thin`` to a command."""
     options = (
         click.option("--plain", is_flag=True, help="Draw with ASCII characters only."),
-        click.option("--thin", is_flag=True, help="For a slow line: no colours, a picture every two seconds."),
+        click.option("--thin", is_flag=True, help="For a slow line: no colours, a picture every three seconds."),
     )
     for option in reversed(options):
         command = option(command)
@@ -71,7 +71,7 @@ def show(
         )
         for i, source in enumerate(sources)
     )
-    app = Dashboard(feeds, plain=plain or not _knows_braille(), thin=thin)
+    app = Dashboard(feeds, plain=plain or not _knows_braille())
     app.run(mouse=False)
     for recorder in recorders:
         click.echo(f"{recorder.bytes} bytes kept in '{printable(str(recorder.folder))}'", err=True)

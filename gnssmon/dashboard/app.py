@@ -69,7 +69,7 @@ class Dashboard(App[None]):
         Binding("n", "next_source", "Next source", show=False),
     ]
 
-    def __init__(self, feeds: tuple[Feed, ...], *, plain: bool = False, thin: bool = False) -> None:
+    def __init__(self, feeds: tuple[Feed, ...], *, plain: bool = False) -> None:
         super().__init__()
         self._feeds = feeds
         self._feed = feeds[0]
@@ -78,9 +78,9 @@ class Dashboard(App[None]):
         self._view = VIEWS[0]
         self._frozen: Snapshot | None = None
         self._plain = plain
-        self._thin = thin
         self._row, self._choice = 0, ""
         self._canvas = Canvas()
+        self._painted_s = 0.0
 
     def compose(self) -> ComposeResult:
         yield self._canvas
@@ -120,7 +120,8 @@ class Dashboard(App[None]):
             self._paint()
 
     def _grow_older(self) -> None:
-        if self._frozen is None and self._feed.source.kind == "live":
+        quiet_s = self._feed.clock.steady() - self._painted_s
+        if self._frozen is None and self._feed.source.kind == "live" and quiet_s >= max(AGE_S, self._feed.pace_s):
             self._paint()
 
     def on_canvas_resized(self) -> None:
@@ -132,6 +133,7 @@ class Dashboard(App[None]):
 
     def _paint(self) -> None:
         width, height = self._canvas.size
+        self._painted_s = self._feed.clock.steady()
         if width and height:
             size = Size(width, height, self._plain, self._row, self._choice)
             note = "FROZEN" if self._frozen is not None else ""

@@ -92,16 +92,21 @@ class Slice(Widget):
         style = self._styles.get(tone)
         if style is None:
             style = self.get_component_rich_style(f"tone-{tone}") if tone else self.rich_style
-            if self.app.current_theme.ansi:
-                style = _bare(style)
+            if self.app.no_color or self.app.current_theme.ansi:
+                style = _bare(style, colour=not self.app.no_color)
             self._styles[tone] = style
         return style
 
 
-def _bare(style: Style) -> Style:
+def _bare(style: Style, *, colour: bool) -> Style:
     """Without the terminal's own colours: what it shows anyway need not be asked for."""
-    color = None if style.color is None or style.color.is_default else style.color
-    return Style(color=color, bold=style.bold or None, dim=style.dim or None, reverse=style.reverse or None)
+    plain = not colour or style.color is None or style.color.is_default
+    return Style(
+        color=None if plain else style.color,
+        bold=style.bold or None,
+        dim=style.dim or None,
+        reverse=style.reverse or None,
+    )
 
 
 def changes(old: Grid, new: Grid, first: int, last: int) -> list[Region]:

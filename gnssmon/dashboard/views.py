@@ -154,7 +154,8 @@ def _fix(snapshot: Snapshot, now_s: float) -> tuple[str, str]:
     r95, hdop = value(snapshot, "scatter.r95_m"), now.hdop
     good = f", R95 {metres(r95)}" if r95 is not None else "" if hdop is None else f", HDOP {number(hdop)}"
     stale = age > 5.0 + 2.0 * (value(snapshot, "stream.interval_s") or 0.0)
-    old = f", {in_words(age)} old" if age >= 1.0 or snapshot.source.kind == "live" else ""
+    usual = 1.5 * (value(snapshot, "stream.interval_s") or 1.0) + 0.5
+    old = f", {in_words(age)} old" if age > usual else ", now"
     text = f"{quality_words(now.quality)}{good}{old}"
     return (f"✗ {text}", "bad") if stale else (text, quality_tone(now.quality) or "strong")
 

@@ -6,7 +6,7 @@ import math
 
 import numpy as np
 
-from gnssmon.dashboard.drawing import Grid, Plot, Size, ticks
+from gnssmon.dashboard.drawing import FARTHEST, Grid, Plot, Size, ticks
 from gnssmon.dashboard.panels.panel import QUALITIES, Panel, metres, nothing, number, value
 from gnssmon.snapshot import Snapshot
 from gnssmon.statistics.pictures import ScatterPicture
@@ -18,6 +18,12 @@ NARROWEST_PLOT = 20
 
 SMALLEST_M = 0.001
 """Half width of a plot of positions that do not differ."""
+
+DEGREE_M = 111_320.0
+"""Of latitude, about; only to lay cells on the ground."""
+
+STEP = 1.4
+"""From one scale of the plot to the next."""
 
 BASE_TONES = ("bad", "one", "two", "two", "good", "doubt", "doubt", "quiet", "quiet")
 """Dots by GGA quality; the qualities seen are also named beside the plot."""
@@ -40,21 +46,17 @@ def render(snapshot: Snapshot, size: Size) -> Grid:
 
 def _plot(grid: Grid, picture: ScatterPicture, width: int, height: int) -> None:
     mean_east, mean_north = picture.mean_m[:2] if picture.mean_m else (0.0, 0.0)
-    half = max(picture.r95_m if math.isfinite(picture.r95_m) else 0.0, SMALLEST_M) * 1.25
+    # In steps, so that the whole cloud does not move whenever the ring grows by a hair.
+    half = max(picture.r95_m if math.isfinite(picture.r95_m) else 0.0, SMALLEST_M) * 1.1
+    half = STEP ** math.ceil(math.log(min(half, FARTHEST)) / math.log(STEP))
     if picture.about == "reference":
         # The reference stays in sight unless it is so far that the cloud would be a dot.
         away = max(abs(mean_east), abs(mean_north))
         half = max(half, away * 1.2 if away < 20.0 * half else half)
     middle = (mean_east / 2, mean_north / 2) if picture.about == "reference" else (mean_east, mean_north)
-    plot = Plot(
-        grid,
-        (0, 0, width, height - 1),
-        (middle[0] - half, middle[0] + half),
-        (middle[1] - half, middle[1] + half),
-        equal=True,
-    )
+    plot = _anchored(grid, picture, (0, 0, width, height - 1), middle, half)
     for edge in (picture.cep50_m, picture.r95_m):
-        plot.ellipse(mean_east, mean_north, edge, edge, 0.0, "line")
+        _ring(plot, mean_east, mean_north, edge)
     order = np.argsort(picture.quality, kind="stable")
     for i in order.tolist():
         quality = int(picture.quality[i])
@@ -68,6 +70,35 @@ def _plot(grid: Grid, picture: ScatterPicture, width: int, height: int) -> None:
     east = picture.r95_m if math.isfinite(picture.r95_m) else half
     plot.text(mean_east + east * 0.71, mean_north + east * 0.71, "R95", "line")
     _scale(grid, plot, height - 1)
+
+
+def _ring(plot: Plot, east: float, north: float, radius: float) -> None:
+    """A ring on widths of a cell: it moves when it has moved by one, not a little with every epoch."""
+    dot = (plot.x_range[1] - plot.x_range[0]) / plot.width
+    places = [(v - origin) / dot for v, origin in ((east, plot.x_range[0]), (north, plot.y_range[0]), (radius, 0.0))]
+    if all(math.isfinite(v) and abs(v) < FARTHEST for v in places):
+        x, y, size = (round(v) * dot for v in places)
+        plot.ellipse(plot.x_range[0] + x, plot.y_range[0] + y, size, size, 0.0, "line")
+
+
+def _anchored(
+    grid: Grid, picture: ScatterPicture, box: tuple[int, int, int, int], middle: tuple[float, float], half: float
+) -> Plot:
+    """A plot about ``middle`` whose cells lie fast on the ground: the mean creeps, but no dot moves with it.
+
+    The cloud is given from its own mean. To leave what was drawn where it is (and unpainted), the middle of the plot
+    is put on a whole number of cells from the equator and the zero meridian.
+    """
+    plot = Plot(grid, box, (-half, half), (-half, half), equal=True)
+    if picture.origin is None or plot.width < 1 or plot.height < 1:
+        return plot
+    latitude, longitude = picture.origin[:2]
+    ground = longitude * DEGREE_M * math.cos(math.radians(round(latitude, 2))), latitude * DEGREE_M
+    cell = (plot.x_range[1] - plot.x_range[0]) / plot.width, (plot.y_range[1] - plot.y_range[0]) / plot.height
+    if not all(math.isfinite(v) and abs(v) < FARTHEST for v in (*ground, *middle)):
+        return plot
+    east, north = (round((g + m) / c) * c - g for g, m, c in zip(ground, middle, cell, strict=True))
+    return Plot(grid, box, (east - half, east + half), (north - half, north + half), equal=True)
 
 
 def _scale(grid: Grid, plot: Plot, y: int) -> None:
