@@ -26,7 +26,7 @@ import numpy.typing as npt
 
 Floats = npt.NDArray[np.float64]
 
-TERMS = 24
+TERMS = 36
 """Cosines used: with fewer the time constant is too uncertain, with more the noise need not be of one time constant."""
 SAMPLES_PER_TERM = 3
 FEWEST_SAMPLES = 24
@@ -34,7 +34,7 @@ FEWEST_SAMPLES = 24
 MOST_BLOCKS = 2048
 """Records are averaged down to this many blocks first: the slow cosines cannot tell the difference."""
 
-LONGEST, SHORTEST, TIME_CONSTANTS = 1.0, 3000.0, 16
+LONGEST, SHORTEST, TIME_CONSTANTS = 1.0, 10_000.0, 18
 """Record lengths in units of the time constant that are considered, and how many."""
 AMPLITUDES = np.geomspace(0.01, 6.0, 20)
 """Variances considered beside a prior, in units of what the cosines alone would say."""

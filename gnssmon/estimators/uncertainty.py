@@ -8,6 +8,7 @@ its own: slow errors hurt a mean more than a spread, and a spread more than the 
 from __future__ import annotations
 
 import math
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -17,12 +18,20 @@ from gnssmon.estimators.long_run import Error
 Floats = npt.NDArray[np.float64]
 Interval = tuple[float, float]
 
-FEW = 100.0
-"""Below so many effective samples the order statistics near the ends of a sample are too few to stand alone."""
 FEWEST = 2.0
-"""Below so many they say nothing at all."""
+"""Below so many effective trials order statistics say nothing at all."""
 SLOWEST = 0.75
 """Largest share of a variance that the movement of the mean is believed to have taken away."""
+
+
+class Scale(NamedTuple):
+    """Factors on a spread for the ends of its interval."""
+
+    low: float
+    high: float
+    """``given_back`` included."""
+    given_back: float
+    """What the mean about which the spread was taken has taken away, 1/√(1 - 1/effective)."""
 
 
 def normal(confidence: float) -> float:
@@ -39,28 +48,38 @@ def effective_samples(variance: float, error: Error | None, count: int) -> float
     return min(max(variance / error.shown_variance, 1.0), float(count))
 
 
-def effective_trials(share: float, error: Error | None, confidence: float, count: int) -> float:
+def effective_trials(
+    share: float, error: Error | None, confidence: float, count: int, *, effective: float = math.inf
+) -> float:
     """How many independent trials a share is worth, its uncertainty included, so that binomial intervals with this
-    number hold ``confidence``; NaN: too few to say."""
-    if error is None:
-        return math.nan
-    half = error.half_width(confidence)
+    number hold ``confidence``; NaN: too few to say.
+
+    ``effective``: effective samples of a mean that the share depends on (see ``scale``).
+    """
+    half = 0.0 if error is None or math.isnan(effective) else error.half_width(confidence) * _few(effective)
     return min(share * (1.0 - share) * (normal(confidence) / half) ** 2, float(count)) if half > 0.0 else math.nan
 
 
-def scale_factors(
-    mean_square: float, error: Error | None, confidence: float, *, effective: float
-) -> tuple[float, float] | None:
-    """Factors on a root mean square for its interval, on a logarithmic scale.
+def _few(effective: float) -> float:
+    """Widening for few effective samples.
+
+    Squares of a few slow swings are skewed: where they happen to be small, so is their apparent uncertainty. One part
+    in the effective number restores the coverage (simulation: tests/benchmarks/interval_coverage.py).
+    """
+    return 1.0 + 1.0 / effective
+
+
+def scale(mean_square: float, error: Error | None, confidence: float, *, effective: float) -> Scale | None:
+    """Factors on a root mean square, and on any spread that grows with it, on a logarithmic scale.
 
     ``error``: of the mean of the squares. ``effective``: effective samples of the mean about which the squares were
-    taken; what that mean took away is given back at the upper end, 1/√(1 - 1/effective).
+    taken. None: too few to say.
     """
     if error is None or not mean_square > 0.0 or math.isnan(effective):
         return None
-    half = 0.5 * error.half_width(confidence) / mean_square
-    back = 1.0 / math.sqrt(1.0 - min(1.0 / effective, SLOWEST))
-    return math.exp(-min(half, 50.0)), math.exp(min(half, 50.0)) * back
+    half = min(0.5 * error.half_width(confidence) / mean_square * _few(effective), 50.0)
+    given_back = 1.0 / math.sqrt(1.0 - min(1.0 / effective, SLOWEST))
+    return Scale(math.exp(-half), math.exp(half) * given_back, given_back)
 
 
 def ordered_quantile(ordered: Floats, share: float) -> float:
@@ -72,29 +91,26 @@ def ordered_quantile(ordered: Floats, share: float) -> float:
 
 
 def quantile_interval(
-    ordered: Floats, share: float, trials: float, confidence: float, *, factors: tuple[float, float] | None = None
+    ordered: Floats, share: float, trials: float, confidence: float, *, spread: Scale | None = None
 ) -> Interval | None:
     """Interval of the quantile at ``share`` of rising values from their order statistics.
 
-    ``trials``: effective trials of the share below the quantile. ``factors``: of the spread (``scale_factors``); where
-    the order statistics are few the interval takes in the quantile times these, and without them it is None: the
-    largest of too few samples may well lie below the quantile (Hahn & Meeker, Statistical Intervals; 72 independent
-    ones are needed for a two-sided 95 % interval of the 95 % quantile).
+    ``trials``: effective trials of the share below the quantile. The largest of too few samples may well lie below the
+    quantile: 72 independent ones are needed for a two-sided 95 % interval of the 95 % quantile (Hahn & Meeker,
+    Statistical Intervals); with fewer the interval is None, unless ``spread`` is given: for distances from a mean it
+    takes in what is known of the spread as a whole.
     """
-    if math.isnan(trials) or not trials > 0.0:
+    if math.isnan(trials):
         return None
     tail = (1.0 - confidence) / 2.0
     half = normal(confidence) * math.sqrt(share * (1.0 - share) / trials)
     low, high = ordered_quantile(ordered, share - half), ordered_quantile(ordered, share + half)
-    out_of_reach = share**trials > tail or (1.0 - share) ** trials > tail
-    if factors is None:
-        return None if out_of_reach else (low, high)
+    if spread is None:
+        return None if share**trials > tail or (1.0 - share) ** trials > tail else (low, high)
     value = ordered_quantile(ordered, share)
     if trials < FEWEST:
-        return value * factors[0], value * factors[1]
-    if trials < FEW:
-        return min(low, value * factors[0]), max(high, value * factors[1])
-    return low, high
+        return value * spread.low, value * spread.high
+    return min(low, value * spread.low), max(high * spread.given_back, value * spread.high)
 
 
 def share_interval(share: float, trials: float, confidence: float) -> Interval:

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import itertools
+
 import numpy as np
 import pytest
 from hypothesis import given, settings
@@ -40,7 +42,7 @@ def test_any_cut_gives_the_same(values, cuts):
     """Merging the parts of any cut, empty and one-sample parts included, gives what one pass gives."""
     edges = [0, *sorted(min(cut, len(values)) for cut in cuts), len(values)]
     merged = Moments(2)
-    for start, stop in zip(edges[:-1], edges[1:], strict=True):
+    for start, stop in itertools.pairwise(edges):
         merged.merge(_of(values[start:stop]))
     whole = _of(values)
 

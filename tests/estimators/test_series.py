@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import itertools
+
 import numpy as np
 from hypothesis import given, settings
 from hypothesis import strategies as st
@@ -15,7 +17,7 @@ MOST = 40
 def _fill(axis_ms: np.ndarray, cuts: list[int], *, merged: bool) -> Series:
     whole = Series({"value": np.float64}, most_rows=MOST)
     edges = [0, *sorted(min(cut, len(axis_ms)) for cut in cuts), len(axis_ms)]
-    for start, stop in zip(edges[:-1], edges[1:], strict=True):
+    for start, stop in itertools.pairwise(edges):
         times = axis_ms[start:stop]
         if merged:
             later = Series({"value": np.float64}, most_rows=MOST)

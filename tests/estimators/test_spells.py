@@ -28,7 +28,7 @@ def _columns(samples: list[tuple[int, int]]) -> tuple[np.ndarray, np.ndarray]:
 def _fill(axis_ms: np.ndarray, state: np.ndarray, cuts: list[int], *, merged: bool = False) -> Spells:
     whole = Spells()
     edges = [0, *sorted(min(cut, len(axis_ms)) for cut in cuts), len(axis_ms)]
-    for start, stop in zip(edges[:-1], edges[1:], strict=True):
+    for start, stop in itertools.pairwise(edges):
         if merged:
             later = Spells()
             later.update(axis_ms[start:stop], state[start:stop])

@@ -9,6 +9,7 @@ import pytest
 from scipy import stats
 
 from gnssmon.estimators import long_run, uncertainty
+from gnssmon.estimators.uncertainty import Scale
 from tests.estimators.noise import slow
 
 
@@ -59,7 +60,7 @@ def test_no_upper_limit_from_too_few():
 
     assert uncertainty.quantile_interval(values, 0.95, 71.0, 0.95) is None
     assert uncertainty.quantile_interval(values, 0.95, 72.0, 0.95) is not None
-    assert uncertainty.quantile_interval(values, 0.95, 71.0, 0.95, factors=(0.8, 1.3)) is not None
+    assert uncertainty.quantile_interval(values, 0.95, 71.0, 0.95, spread=Scale(0.8, 1.3, 1.0)) is not None
     assert uncertainty.quantile_interval(values, 0.95, math.nan, 0.95) is None
 
 
@@ -67,7 +68,7 @@ def test_length_of_a_vector():
     """The interval of a length has the stated coverage for zero, short and long vectors, by simulation."""
     rng = np.random.default_rng(2)
     for truth in (0.0, 1.0, 5.0):
-        points = rng.normal(size=(2000, 2)) + (truth, 0.0)
+        points = rng.normal(size=(2000, 2)) + np.array([truth, 0.0])
         hits = 0
         for length in np.hypot(*points.T):
             low, high = uncertainty.length_interval(float(length), uncertainty.normal(0.95), 0.95)
@@ -100,13 +101,13 @@ def test_rings_and_spread_of_correlated_positions(time_constant_s):
             [square, distance > np.quantile(distance, 0.5), distance > np.quantile(distance, 0.95), e]
         )
         effective = uncertainty.effective_samples(float(e.var(ddof=1)), errors[3], len(e))
-        factors = uncertainty.scale_factors(float(square.mean()), errors[0], 0.95, effective=effective)
-        assert factors is not None
+        spread = uncertainty.scale(float(square.mean()), errors[0], 0.95, effective=effective)
+        assert spread is not None
         drms = math.sqrt(float(square.mean()))
-        hits[1.0] += drms * factors[0] <= truths[1.0] <= drms * factors[1]
+        hits[1.0] += drms * spread.low <= truths[1.0] <= drms * spread.high
         for share, error in ((0.50, errors[1]), (0.95, errors[2])):
-            trials = uncertainty.effective_trials(share, error, 0.95, len(e))
-            interval = uncertainty.quantile_interval(ordered, share, trials, 0.95, factors=factors)
+            trials = uncertainty.effective_trials(share, error, 0.95, len(e), effective=effective)
+            interval = uncertainty.quantile_interval(ordered, share, trials, 0.95, spread=spread)
             assert interval is not None
             hits[share] += interval[0] <= truths[share] <= interval[1]
 
