@@ -107,7 +107,8 @@ def _elevations(minute: Ints, satellite: Ints, looks: Rows) -> Floats:
     known = (looks.minute << 32) | looks.satellite
     at = np.minimum(np.searchsorted(known, distinct), len(known) - 1)
     found: Floats = np.where(known[at] == distinct, looks.elevation_deg[at], np.nan)
-    return found[np.cumsum(first) - 1]
+    spread: Floats = found[np.cumsum(first) - 1]
+    return spread
 
 
 def _band(elevation_deg: Floats) -> npt.NDArray[np.intp]:
