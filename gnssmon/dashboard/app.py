@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import asyncio
 import math
+import os
 import signal
 from collections.abc import Iterable
 from contextlib import suppress
@@ -70,7 +71,8 @@ class Dashboard(App[None]):
     ]
 
     def __init__(self, feeds: tuple[Feed, ...], *, plain: bool = False) -> None:
-        super().__init__()
+        # Without colours, the library would turn the palette's names into grey values, black among them.
+        super().__init__(ansi_color=True if "NO_COLOR" in os.environ else None)
         self._feeds = feeds
         self._feed = feeds[0]
         self._newest: dict[int, Snapshot] = {}

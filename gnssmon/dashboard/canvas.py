@@ -68,7 +68,7 @@ class Slice(Widget):
     def __init__(self, canvas: Canvas) -> None:
         super().__init__()
         self._canvas = canvas
-        self._styles: dict[str, Style] = {}
+        self._styles: dict[str, Style | None] = {}
 
     @property
     def place(self) -> tuple[int, int]:
@@ -88,25 +88,24 @@ class Slice(Widget):
         super().notify_style_update()
         self._styles.clear()
 
-    def _style(self, tone: str) -> Style:
-        style = self._styles.get(tone)
-        if style is None:
+    def _style(self, tone: str) -> Style | None:
+        if tone not in self._styles:
             style = self.get_component_rich_style(f"tone-{tone}") if tone else self.rich_style
-            if self.app.no_color or self.app.current_theme.ansi:
-                style = _bare(style, colour=not self.app.no_color)
-            self._styles[tone] = style
-        return style
+            bare = self.app.no_color or self.app.current_theme.ansi
+            self._styles[tone] = _bare(style, colour=not self.app.no_color) if bare else style
+        return self._styles[tone]
 
 
-def _bare(style: Style, *, colour: bool) -> Style:
+def _bare(style: Style, *, colour: bool) -> Style | None:
     """Without the terminal's own colours: what it shows anyway need not be asked for."""
     plain = not colour or style.color is None or style.color.is_default
-    return Style(
+    found = Style(
         color=None if plain else style.color,
         bold=style.bold or None,
         dim=style.dim or None,
         reverse=style.reverse or None,
     )
+    return found if found else None
 
 
 def changes(old: Grid, new: Grid, first: int, last: int) -> list[Region]:

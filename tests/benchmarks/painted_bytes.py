@@ -8,6 +8,7 @@ A receiver is played into one pseudo-terminal, the dashboard runs in another of 
 from __future__ import annotations
 
 import fcntl
+import itertools
 import os
 import pty
 import random
@@ -15,11 +16,13 @@ import select
 import struct
 import subprocess
 import sys
+import tempfile
 import termios
 import threading
 import time
 import tty
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
+from pathlib import Path
 
 SYSTEMS = (("GP", 1, (1, 8)), ("GL", 2, (1, 3)), ("GA", 3, (7, 2)), ("GB", 4, (1, 8)))
 """Talker, system identifier and two signal identifiers (NMEA 0183 4.11)."""
@@ -97,7 +100,7 @@ class Screen:
     """Runs a command in a pseudo-terminal and counts what it paints."""
 
     def __init__(self, command: list[str], columns: int = 80, rows: int = 24) -> None:
-        self._master, slave = pty.openpty()
+        self.master, slave = pty.openpty()
         fcntl.ioctl(slave, termios.TIOCSWINSZ, struct.pack("HHHH", rows, columns, 0, 0))
         environment = {k: v for k, v in os.environ.items() if k != "NO_COLOR"}
         environment |= {"TERM": "xterm-256color", "COLORTERM": "truecolor", "LC_ALL": "C.UTF-8"}
@@ -105,24 +108,28 @@ class Screen:
             command, stdin=slave, stdout=slave, stderr=slave, env=environment, start_new_session=True
         )
         os.close(slave)
+        self.seen = b""
+        """The last of what was painted."""
 
     def read(self, seconds: float) -> int:
         """Bytes painted within so many seconds."""
         until, count = time.monotonic() + seconds, 0
         while (left := until - time.monotonic()) > 0:
-            if select.select([self._master], [], [], left)[0]:
+            if select.select([self.master], [], [], left)[0]:
                 try:
-                    count += len(os.read(self._master, 65536))
+                    painted = os.read(self.master, 65536)
                 except OSError:
                     return count
+                count += len(painted)
+                self.seen = (self.seen + painted)[-100_000:]
         return count
 
     def press(self, key: str) -> float:
         """Seconds from a key to the first byte painted after it."""
         self.read(0.05)
         began = time.monotonic()
-        os.write(self._master, key.encode())
-        select.select([self._master], [], [], 5.0)
+        os.write(self.master, key.encode())
+        select.select([self.master], [], [], 5.0)
         return time.monotonic() - began
 
     def cpu_s(self) -> float:
@@ -133,7 +140,7 @@ class Screen:
         return float(times.user + times.system)
 
     def close(self) -> int:
-        os.write(self._master, b"q")
+        os.write(self.master, b"q")
         self.read(1.0)
         return self.process.wait(10)
 
@@ -156,12 +163,68 @@ def measure(seconds: float, rate_hz: float, *options: str) -> None:
     print(f"  left with exit code {code}")
 
 
+def latency(epochs: int) -> None:
+    """Time from a key to its paint while a log is read as fast as it goes."""
+    with tempfile.TemporaryDirectory() as folder:
+        log = Path(folder) / "long.nmea"
+        log.write_bytes(b"".join(itertools.islice(bursts(1.0), epochs)))
+        screen = Screen([sys.executable, "-m", "gnssmon", "replay", str(log), "--speed", "max"])
+        while screen.read(0.1) == 0:
+            pass
+        screen.read(1.0)
+        waits = []
+        for i in range(24):
+            waits.append(screen.press(VIEWS[(i + 1) % len(VIEWS)][0]))
+            screen.read(0.1)
+        still = b"ended" not in screen.seen
+        screen.close()
+        waits.sort()
+        if not still:
+            print("  (the log had ended before the last key)")
+        size = log.stat().st_size / 1e6
+        print(f"key to paint while {size:.0f} MB are read at full speed: median {waits[12] * 1000:.0f} ms, ", end="")
+        print(f"worst of {len(waits)} {waits[-1] * 1000:.0f} ms")
+
+
+def start() -> None:
+    """Time to the first painted frame, against the bare import of the screen library."""
+
+    def shortest(run: Callable[[], None]) -> float:
+        times = []
+        for _ in range(3):
+            began = time.monotonic()
+            run()
+            times.append(time.monotonic() - began)
+        return min(times)
+
+    def frame() -> None:
+        screen = Screen([sys.executable, "-m", "gnssmon", "replay", str(log)])
+        painted = b""
+        while "─ Fix".encode() not in painted:
+            painted += os.read(screen.master, 65536)
+        frames.append(screen)
+
+    frames: list[Screen] = []
+    bare = "from textual.app import App; from textual.widgets import Footer"
+    with tempfile.TemporaryDirectory() as folder:
+        log = Path(folder) / "short.nmea"
+        log.write_bytes(b"".join(itertools.islice(bursts(1.0), 60)))
+        imported_s = shortest(lambda: subprocess.run([sys.executable, "-c", bare], check=True) and None)
+        first_s = shortest(frame)
+        for screen in frames:
+            screen.close()
+    print(f"first frame after {first_s:.2f} s; importing the screen library alone {imported_s:.2f} s: ", end="")
+    print(f"{first_s / imported_s:.1f} times that")
+
+
 def main() -> None:
     seconds = float(sys.argv[1]) if len(sys.argv) > 1 else 10.0
     rates = [float(text) for text in sys.argv[2:]] or [1.0]
     for rate_hz in rates:
         measure(seconds, rate_hz)
     measure(seconds, rates[0], "--thin")
+    latency(60_000)
+    start()
 
 
 if __name__ == "__main__":

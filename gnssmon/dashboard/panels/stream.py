@@ -51,7 +51,7 @@ def _figures(snapshot: Snapshot) -> list[tuple[str, str, str]]:
     text = ", ".join(errors) or "none"
     rows.append(("Errors", text, "doubt" if (failures or 0.0) > 0.001 else ""))
     rate, load = value(snapshot, "stream.bytes_per_s"), value(snapshot, "stream.link_load")
-    text = f"{number(rate, 0)} B/s" + (f", {percent(load)} of the line" if load is not None else "")
+    text = "–" if rate is None else f"{rate:.0f} B/s" + (f", {percent(load)} of the line" if load is not None else "")
     rows.append(("Rate", text, "doubt" if (load or 0.0) > 0.8 else ""))
     rows.append(("Received", f"{words.size(facts.bytes)}, {facts.sentences} sentences", ""))
     epochs, duration = value(snapshot, "stream.epochs"), value(snapshot, "stream.duration_s")
