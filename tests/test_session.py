@@ -350,10 +350,9 @@ def test_three_paths_one_answer(tmp_path: Path) -> None:
     os.close(far)
     judge("recording", open_source(str(tmp_path / "recording"), clock=CLOCK))
 
-    exactly = {"abs": 0.0, "rel": 0.0, "nan_ok": True}
     for name in ("replay", "live", "recording"):
-        assert without_host_times(results["log"]) == pytest.approx(without_host_times(results[name]), **exactly)
+        assert repr(without_host_times(results["log"])) == repr(without_host_times(results[name]))
     # Delay and jitter come out of the recording as they were.
-    assert results["recording"] == pytest.approx(results["live"], **exactly)
+    assert repr(results["recording"]) == repr(results["live"])
     assert isinstance(results["log"]["scatter.r95_m"], float)
     assert any(isinstance(value, float) for name, value in results["live"].items() if name.startswith("timing."))
