@@ -5,6 +5,7 @@ from __future__ import annotations
 import os
 import sys
 from collections.abc import Callable, Sequence
+from contextlib import suppress
 from dataclasses import replace
 from typing import TYPE_CHECKING, Any
 
@@ -73,8 +74,9 @@ def show(
     )
     app = Dashboard(feeds, plain=plain or not _knows_braille())
     app.run(mouse=False)
-    for recorder in recorders:
-        click.echo(f"{recorder.bytes} bytes kept in '{printable(str(recorder.folder))}'", err=True)
+    with suppress(OSError):  # a terminal that has hung up is told nothing
+        for recorder in recorders:
+            click.echo(f"{recorder.bytes} bytes kept in '{printable(str(recorder.folder))}'", err=True)
     for feed in feeds:
         if feed.failure is not None:
             raise feed.failure

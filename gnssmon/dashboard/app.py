@@ -5,7 +5,9 @@ from __future__ import annotations
 import asyncio
 import math
 import os
+import select
 import signal
+import sys
 from collections.abc import Iterable
 from contextlib import suppress
 from typing import ClassVar
@@ -83,6 +85,7 @@ class Dashboard(App[None]):
         self._row, self._choice = 0, ""
         self._canvas = Canvas()
         self._painted_s = 0.0
+        self._in_terminal = sys.__stdin__ is not None and sys.__stdin__.isatty()
 
     def compose(self) -> ComposeResult:
         yield self._canvas
@@ -122,6 +125,8 @@ class Dashboard(App[None]):
             self._paint()
 
     def _grow_older(self) -> None:
+        if self._in_terminal and _hung_up():
+            self.exit()
         quiet_s = self._feed.clock.steady() - self._painted_s
         if self._frozen is None and self._feed.source.kind == "live" and quiet_s >= max(AGE_S, self._feed.pace_s):
             self._paint()
@@ -255,3 +260,14 @@ class Dashboard(App[None]):
                     "window of time",
                     lambda w=window: self._feed.choose(w),
                 )
+
+
+def _hung_up() -> bool:
+    """Whether the terminal is gone: one that does not control us sends no signal when it goes."""
+    if sys.__stdin__ is None or not hasattr(select, "poll"):
+        return False
+    with suppress(OSError, ValueError):
+        poll = select.poll()
+        poll.register(sys.__stdin__.fileno(), 0)
+        return any(event & (select.POLLHUP | select.POLLERR) for _, event in poll.poll(0))
+    return True
