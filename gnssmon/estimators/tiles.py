@@ -184,6 +184,8 @@ class Tiles:
         values = np.concatenate([values for _, values in self._waiting])
         self._waiting, self._waiting_entries = [], 0
         key, values = combined(key, values, self._combine)
+        if self._latest is not None and key[0] >> _COLUMN_BITS < self._latest - self._rungs()[0][0]:
+            self._joined_at = None  # What has just come is old enough to be joined at once.
         # Usually new entries lie behind the table but for its last minute; a receiver's clock may step back.
         begin = int(np.searchsorted(self._key[: self._used], key[0]))
         if begin < self._used:

@@ -33,6 +33,8 @@ REPORTED_NAMES = ("hdop", "pdop", "vdop")
 RECOMPUTED_NAMES = ("reported", "hdop_common", "pdop_common", "hdop_systems", "pdop_systems")
 LANGLEY = "R. B. Langley, Dilution of precision, GPS World, May 1999"
 REPORTED = "as the receiver reports it (GSA; HDOP from GGA or GNS)"
+TELLING = 0.01
+"""The two conventions must lie so much differently far from the reported HDOP, which is printed to 0.01 or 0.1."""
 ENOUGH = 0.8
 """Share of an epoch's used satellites whose direction must be known: a missing one changes the geometry."""
 
@@ -63,7 +65,10 @@ class Dop:
         Quantity(
             name="dop.clocks_per_system",
             unit="1",
-            meaning="1: the receiver's HDOP fits one clock a system better; 0: one clock for all systems.",
+            meaning=(
+                "1: the receiver's HDOP fits one clock a system better; 0: one clock for all systems. None where both "
+                "fit about as well, which is usual: they differ by 1 %."
+            ),
             source="this program's own definition",
         ),
     )
@@ -122,13 +127,15 @@ class Dop:
         columns = {
             name: self._recomputed[name].view(np.float32)[chosen].astype(np.float64) for name in RECOMPUTED_NAMES
         }
-        clocks = "systems" if _distance(columns, "systems") <= _distance(columns, "common") else "common"
+        distance = {clocks: _distance(columns, clocks) for clocks in ("common", "systems")}
+        clocks = min(distance, key=lambda kind: distance[kind])
+        if abs(distance["systems"] - distance["common"]) > TELLING:
+            answers["dop.clocks_per_system"] = exact(float(clocks == "systems"), len(columns["reported"]))
         for name in ("hdop", "pdop"):
             values = columns[f"{name}_{clocks}"]
             values = values[np.isfinite(values)]
             if len(values):
                 answers[f"dop.{name}_recomputed_median"] = quantile_estimate(values, 0.5, confidence)
-                answers["dop.clocks_per_system"] = exact(float(clocks == "systems"), len(values))
         return answers
 
     def picture(self, span: Span = EVERYTHING) -> None:

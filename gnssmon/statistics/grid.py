@@ -34,7 +34,8 @@ PER_DB = 100
 LOUDEST = 327.0
 """dB-Hz; anything above is a misprint and is cut to this."""
 AZIMUTH_STEP = 4096
-"""Direction = (elevation in tenths + 900) * AZIMUTH_STEP + azimuth in tenths."""
+ZERO_ELEVATION = 900
+"""Direction = (elevation in tenths + ZERO_ELEVATION) * AZIMUTH_STEP + azimuth in tenths."""
 UNKNOWN_DIRECTION, NOT_LISTED = -1, -2
 REPEATS = 8
 """Times that one epoch may list one satellite on one signal; more are noise and the last counts."""
@@ -114,7 +115,7 @@ def azimuths_deg(direction: npt.NDArray[np.int32]) -> Floats:
 
 def elevations_deg(direction: npt.NDArray[np.int32]) -> Floats:
     """Elevation in degrees of known directions, shape as given."""
-    return np.asarray(direction // AZIMUTH_STEP / 10.0 - 90.0)
+    return np.asarray((direction // AZIMUTH_STEP - ZERO_ELEVATION) / 10.0)
 
 
 @functools.lru_cache(maxsize=1)
@@ -210,7 +211,7 @@ def _levels(cn0_dbhz: npt.NDArray[np.float32]) -> Levels:
 def _directions(azimuth_deg: npt.NDArray[np.float32], elevation_deg: npt.NDArray[np.float32]) -> npt.NDArray[np.int32]:
     # Below 2^24, so that single precision is exact.
     joined = np.rint(elevation_deg * np.float32(10.0))
-    joined += np.float32(900.0)
+    joined += np.float32(ZERO_ELEVATION)
     joined *= np.float32(AZIMUTH_STEP)
     azimuth = np.rint(azimuth_deg * np.float32(10.0))
     if (azimuth >= 3600).any() or (azimuth < 0).any():

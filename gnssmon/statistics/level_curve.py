@@ -1,11 +1,11 @@
 """Level against elevation, what is each satellite's own, and what all satellites have in common at a time.
 
 Strategy. A minute's mean level of one satellite's signal is taken as a sum: curve of the signal at the satellite's
-elevation + the satellite's own offset + what all have in common in that minute + rest. Satellites differ by some dB in
-what they send, so a plain mean over those in view moves whenever one rises or sets; the common part does not. Curve and
-offsets are found by turns (backfitting: J. H. Friedman & W. Stuetzle, J. Am. Stat. Assoc. 76, 1981), offsets drawn
-towards zero by what is known of satellites in general; the common part by Huber's robust mean (P. J. Huber, Ann. Math.
-Stat. 35, 1964), so that one satellite behind a tree does not move it.
+elevation + the satellite's own offset + what all have in common at that time + rest. Satellites differ by some dB in
+what they send, so a plain mean over those in view moves whenever one rises or sets; the common part does not. The three
+are found by turns (backfitting: J. H. Friedman & W. Stuetzle, J. Am. Stat. Assoc. 76, 1981) on blocks of some minutes:
+offsets drawn towards zero by what is known of satellites in general, the common part by Huber's robust mean (P. J.
+Huber, Ann. Math. Stat. 35, 1964), so that one satellite behind a tree does not move it.
 """
 
 from __future__ import annotations
@@ -27,9 +27,17 @@ Ints = npt.NDArray[np.int64]
 
 BAND_DEG = 5.0
 BANDS = 18
-REFERENCE_BAND = 9
-"""45 to 50 degrees: the elevation that the level over time is reduced to."""
-TURNS = 4
+REFERENCE_DEG = 45.0
+"""The elevation that the level over time is reduced to."""
+POWERS = 4
+"""Of the sine of the elevation, the constant with them: a cubic (after Strode & Groves, GPS Solutions 20, 2016)."""
+STIFFNESS = 0.0025
+"""(1 dB / 20 dB)² minutes."""
+TURNS = 12
+ROBUST_TURNS = 4
+MOST_ROWS = 20_000
+"""Rows that the turns are made with; more are first joined to blocks."""
+BLOCKS_MINUTES = (1, 2, 5, 10, 20, 60)
 SETTLING_MINUTES = 30.0
 """Minutes after which a satellite's own offset counts as much as what is known of satellites in general (1 dB); their
 errors hang together over some minutes. Common practice, no source."""
@@ -74,10 +82,11 @@ def picture(lines: Entries, spread: Ints, looks: Rows) -> LevelPicture:
     cell = levels.signal * BANDS + _band(levels.elevation_deg)
     number = _summed(cell, levels.count, signals * BANDS).reshape(signals, BANDS)
     mean = _ratio(_summed(cell, levels.count * levels.level_dbhz, signals * BANDS).reshape(signals, BANDS), number)
-    curve, offset = _curve_and_offsets(levels, signals)
     line, of_line = np.unique(levels.line, return_inverse=True)
+    curve, offset = _curve_and_offsets(_in_blocks(levels), line, signals)
     by_line = _summed(of_line, levels.count, len(line))
-    minute, level = _over_time(levels, curve, offset, signals)
+    rest = levels.level_dbhz - _at(curve, levels) - offset[of_line]
+    minute, level = _over_time(levels, rest, curve)
     return LevelPicture(
         signals=tuple(LABELS[i] for i in labels.tolist()),
         elevation_deg=(np.arange(BANDS, dtype=np.float64) + 0.5) * BAND_DEG,
@@ -91,7 +100,7 @@ def picture(lines: Entries, spread: Ints, looks: Rows) -> LevelPicture:
         satellite_signal=np.searchsorted(labels, labels_of_lines(line)),
         satellite_count=np.rint(by_line).astype(np.int64),
         satellite_mean_dbhz=_ratio(_summed(of_line, levels.count * levels.level_dbhz, len(line)), by_line),
-        satellite_offset_db=_ratio(_summed(of_line, offset, len(line)), np.bincount(of_line, minlength=len(line))),
+        satellite_offset_db=offset,
     )
 
 
@@ -106,63 +115,101 @@ def _elevations(minute: Ints, satellite: Ints, looks: Rows) -> Floats:
     distinct = wanted[first]
     known = (looks.minute << 32) | looks.satellite
     at = np.minimum(np.searchsorted(known, distinct), len(known) - 1)
-    found: Floats = np.where(known[at] == distinct, looks.elevation_deg[at], np.nan)
-    spread: Floats = found[np.cumsum(first) - 1]
-    return spread
+    elevation_deg = np.where(known[at] == distinct, looks.elevation_deg[at], np.nan)
+    return np.asarray(elevation_deg[np.cumsum(first) - 1])
 
 
 def _band(elevation_deg: Floats) -> npt.NDArray[np.intp]:
     return np.clip(elevation_deg // BAND_DEG, 0, BANDS - 1).astype(np.intp)
 
 
-def _curve_and_offsets(levels: _Levels, signals: int) -> tuple[Floats, Floats]:
-    """The curve's values at the bins' middles, shape (signals, BANDS), NaN unseen; each row's offset, shape (k,)."""
-    line, of_line = np.unique(levels.line, return_inverse=True)
-    minutes = np.bincount(of_line, minlength=len(line))
-    cell = levels.signal * BANDS + _band(levels.elevation_deg)
-    number = np.bincount(cell, minlength=signals * BANDS)
-    offset = np.zeros(len(levels.minute))
-    curve = np.full((signals, BANDS), np.nan)
+def _in_blocks(levels: _Levels) -> _Levels:
+    """Means over blocks of minutes, so wide that few enough rows remain."""
+    for wide in BLOCKS_MINUTES:
+        key, which = np.unique((levels.minute // wide) << 32 | levels.line, return_inverse=True)
+        if len(key) <= MOST_ROWS:
+            break
+    number = np.bincount(which)
+    return _Levels(
+        key >> 32,
+        key & ((1 << 32) - 1),
+        (_summed(which, levels.signal, len(key)) / number).astype(np.intp),
+        np.asarray(_summed(which, levels.elevation_deg, len(key)) / number),
+        number.astype(np.float64),
+        np.asarray(_summed(which, levels.level_dbhz, len(key)) / number),
+    )
+
+
+def _curve_and_offsets(levels: _Levels, line: Ints, signals: int) -> tuple[Floats, Floats]:
+    """The curve's coefficients, shape (signals, POWERS), and the lines' offsets.
+
+    ``levels``: counts are minutes here. ``line``: keys of the lines, rising.
+    """
+    of_line = np.searchsorted(line, levels.line)
+    minutes = _summed(of_line, levels.count, len(line))
+    power = np.sin(np.radians(levels.elevation_deg))[:, None] ** np.arange(POWERS)
+    normal = np.stack(
+        [
+            _summed(levels.signal, levels.count * power[:, i] * power[:, j], signals)
+            for i in range(POWERS)
+            for j in range(POWERS)
+        ],
+        axis=1,
+    ).reshape(signals, POWERS, POWERS)
+    # A slope, bend or turn of 20 dB is as likely as not; a signal seen at one elevation only stays solvable.
+    normal += np.diag([1e-9, *[STIFFNESS] * (POWERS - 1)])
+    _, which = np.unique(levels.minute, return_inverse=True)
+    times = levels.signal * (int(which.max(initial=0)) + 1) + which
+    offset, common = np.zeros(len(line)), np.zeros(len(times))
+    curve: Floats = np.zeros((signals, POWERS))
     for _ in range(TURNS):
-        curve = _ratio(_summed(cell, levels.level_dbhz - offset, signals * BANDS), number).reshape(signals, BANDS)
+        rest = (levels.level_dbhz - offset[of_line] - common) * levels.count
+        right = np.stack([_summed(levels.signal, rest * power[:, i], signals) for i in range(POWERS)], axis=1)
+        curve = np.asarray(np.linalg.solve(normal, right[:, :, None])[:, :, 0], dtype=np.float64)
         rest = levels.level_dbhz - _at(curve, levels)
-        offset = (_summed(of_line, rest, len(line)) / (minutes + SETTLING_MINUTES))[of_line]
+        offset = _summed(of_line, (rest - common) * levels.count, len(line)) / (minutes + SETTLING_MINUTES)
+        found = _huber(times, rest - offset[of_line], levels.signal)
+        # What is common is counted from its mean: the curve holds the level itself.
+        middle = _ratio(_summed(levels.signal, found[times], signals), np.bincount(levels.signal, minlength=signals))
+        common = found[times] - middle[levels.signal]
     return curve, offset
 
 
+def _huber(cell: npt.NDArray[np.intp], rest: Floats, signal: npt.NDArray[np.intp]) -> Floats:
+    """Robust mean of the rows of each cell; rows are weighed against the usual distance of their signal's rows."""
+    number = np.bincount(cell)
+    signals = np.bincount(signal)
+    common = _ratio(_summed(cell, rest, len(number)), number)
+    for _ in range(ROBUST_TURNS):
+        distance = np.abs(rest - common[cell])
+        # The mean of |x| of a normal distribution is 0.8 of its standard deviation.
+        scale = np.maximum(_ratio(_summed(signal, distance, len(signals)), signals) / 0.8, 0.1)
+        weight = np.minimum(1.0, HUBER * scale[signal] / np.maximum(distance, 1e-9))
+        common = _ratio(_summed(cell, weight * rest, len(number)), _summed(cell, weight, len(number)))
+    return common
+
+
 def _at(curve: Floats, levels: _Levels) -> Floats:
-    """The curve at each row's elevation, straight between the middles of the bands seen, shape (k,)."""
-    filled = np.full(curve.shape, np.nan)
-    for values, result in zip(curve, filled, strict=True):
-        seen = np.flatnonzero(np.isfinite(values))
-        if len(seen):
-            result[:] = np.interp(np.arange(BANDS), seen, values[seen])
-    place = np.clip(levels.elevation_deg / BAND_DEG - 0.5, 0.0, BANDS - 1.0)
-    low = np.minimum(place.astype(np.intp), BANDS - 2)
-    cell = levels.signal * BANDS + low
-    step = np.diff(filled, axis=1, append=np.nan).ravel()
-    return np.asarray(filled.ravel()[cell] + step[cell] * (place - low))
+    """The curve at each row's elevation, shape (k,)."""
+    sine = np.sin(np.radians(levels.elevation_deg))
+    own = curve[levels.signal]
+    return np.asarray(own[:, 0] + sine * (own[:, 1] + sine * (own[:, 2] + sine * own[:, 3])))
 
 
-def _over_time(levels: _Levels, curve: Floats, offset: Floats, signals: int) -> tuple[Ints, Floats]:
-    """Level minute by minute as a satellite at 45 to 50 degrees would have it, shape (signals, t)."""
+def _over_time(levels: _Levels, rest: Floats, curve: Floats) -> tuple[Ints, Floats]:
+    """Level minute by minute as a satellite at REFERENCE_DEG would have it, shape (signals, t)."""
     minute, which = np.unique(levels.minute, return_inverse=True)
     cell = levels.signal * len(minute) + which
-    cells = signals * len(minute)
-    rest = levels.level_dbhz - _at(curve, levels) - offset
-    number = np.bincount(cell, minlength=cells)
-    common = _ratio(_summed(cell, rest, cells), number)
-    for _ in range(TURNS):
-        distance = np.abs(rest - common[cell])
-        # Mean of |x| of a normal distribution is 0.8 of its standard deviation.
-        scale = np.maximum(_ratio(_summed(levels.signal, distance, signals), np.bincount(levels.signal)) / 0.8, 0.1)
-        weight = np.minimum(1.0, HUBER * scale[levels.signal] / np.maximum(distance, 1e-9))
-        common = _ratio(_summed(cell, weight * rest, cells), _summed(cell, weight, cells))
-    common[number < FEWEST_COMMON] = np.nan
-    base = curve[:, REFERENCE_BAND].copy()
-    for signal in np.flatnonzero(~np.isfinite(base)).tolist():
-        base[signal] = np.nanmean(curve[signal]) if np.isfinite(curve[signal]).any() else np.nan
-    return minute, common.reshape(signals, len(minute)) + base[:, None]
+    common = np.full(len(curve) * len(minute), np.nan)
+    found = _huber(cell, rest, levels.signal)
+    common[: len(found)] = found
+    common[np.bincount(cell, minlength=len(common)) < FEWEST_COMMON] = np.nan
+    # Where no satellite stood so high, the curve is taken at the highest elevation that was seen.
+    highest = np.zeros(len(curve))
+    np.maximum.at(highest, levels.signal, levels.elevation_deg)
+    sine = np.sin(np.radians(np.minimum(highest, REFERENCE_DEG)))
+    base = (curve * sine[:, None] ** np.arange(POWERS)).sum(axis=1)
+    return minute, common.reshape(len(curve), len(minute)) + base[:, None]
 
 
 def _summed(cell: npt.NDArray[np.intp], values: npt.NDArray[np.generic], cells: int) -> Floats:

@@ -1,6 +1,6 @@
 """Where each satellite stood, minute by minute: one row a satellite and minute, from which the sky is drawn.
 
-A minute's directions are added as vectors, so that rows merge exactly and a mean has no trouble at north.
+Elevations are added as they are, azimuths as vectors, so that rows merge exactly and a mean has no trouble at north.
 """
 
 from __future__ import annotations
@@ -12,7 +12,7 @@ import numpy as np
 import numpy.typing as npt
 
 from gnssmon.estimators.tiles import Tiles
-from gnssmon.statistics.grid import AZIMUTH_STEP, PER_DB, Grid
+from gnssmon.statistics.grid import AZIMUTH_STEP, PER_DB, ZERO_ELEVATION, Grid
 from gnssmon.statistics.subject import Span
 
 Floats = npt.NDArray[np.float64]
@@ -22,13 +22,13 @@ LADDER = ((2880, 10),)
 """Rows of ten minutes after two days: a satellite moves five degrees in that time, no wider row has a direction."""
 MOST_ROWS = 500_000
 """Of satellites by minutes or ten minutes: 28 MB, two months of 50 satellites."""
-UNIT = 10_000.0
-"""Parts of the unit vector that are counted; 0.006 degrees."""
+UNIT = 1e7
+"""Parts of the unit vector that are counted."""
+DECIMALS = 2
+"""Of a mean azimuth: whole degrees come back whole, and do not fall into the sector beside theirs."""
 
 _TENTHS = np.radians(np.arange(AZIMUTH_STEP) / 10.0)
-_SINE, _COSINE = np.sin(_TENTHS), np.cos(_TENTHS)
-_HEIGHT = np.radians(np.arange(1801) / 10.0 - 90.0)
-_UP, _FLAT = np.sin(_HEIGHT) * UNIT, np.cos(_HEIGHT) * UNIT
+_EAST, _NORTH = np.rint(np.sin(_TENTHS) * UNIT).astype(np.int64), np.rint(np.cos(_TENTHS) * UNIT).astype(np.int64)
 
 
 @dataclass(frozen=True, slots=True)
@@ -67,17 +67,15 @@ class Looks:
         satellite, run = np.nonzero(listed)
         if not len(satellite):
             return
-        place = np.where(known, direction, 0)
-        height, azimuth = place // AZIMUTH_STEP, place % AZIMUTH_STEP
-        flat = _FLAT[height] * known
+        place = np.where(known, direction, AZIMUTH_STEP * ZERO_ELEVATION)
+        height, azimuth = place // AZIMUTH_STEP - ZERO_ELEVATION, place % AZIMUTH_STEP
         level = np.where(known, grid.best, 0)
         sums = [
             listed,
             grid.sums(level > 0),
-            *(
-                grid.sums(np.rint(part))
-                for part in (flat * _SINE[azimuth], flat * _COSINE[azimuth], _UP[height] * known)
-            ),
+            grid.sums(_EAST[azimuth] * known),
+            grid.sums(_NORTH[azimuth] * known),
+            grid.sums(height),
             grid.sums(level),
         ]
         self._tiles.add(grid.minute[run], grid.satellite[satellite], *(total[satellite, run] for total in sums))
@@ -89,14 +87,14 @@ class Looks:
     def within(self, span: Span) -> Rows:
         """The rows that touch the span."""
         minute, satellite, values = self._tiles.select(span.from_ms, span.to_ms)
-        listed, tracked, east, north, up, level = values.T
+        listed, tracked, east, north, height, level = values.T
         level_dbhz = np.full(len(minute), np.nan)
         np.divide(level / PER_DB, tracked, out=level_dbhz, where=tracked > 0)
         return Rows(
             minute=minute,
             satellite=satellite,
-            azimuth_deg=np.degrees(np.arctan2(east, north)) % 360.0,
-            elevation_deg=np.degrees(np.arctan2(up, np.hypot(east, north))),
+            azimuth_deg=np.round(np.degrees(np.arctan2(east, north)), DECIMALS) % 360.0,
+            elevation_deg=height / 10.0 / listed,
             listed=listed,
             tracked=tracked,
             level_dbhz=level_dbhz,

@@ -49,6 +49,9 @@ SETTLING_ROWS = 60.0
 
 COVERED = 0.9
 """Share of the reachable cells that a record should have crossed. Common practice, no source."""
+FLATTEST, STEEPEST = 0.85, 1.2
+"""Bounds of the exponent b in 1 - exp(-(t/a)^b): the cells that satellites stand in at the start make it look flatter
+than it goes on (simulated skies of one, two and four systems)."""
 SHORTEST_FORECAST_S, LONGEST_FORECAST_S = 1800.0, 2 * 86_400.0
 
 ORBITS = {"G": (26_559_700.0, 55.0), "R": (25_508_000.0, 64.8), "E": (29_599_800.0, 56.0), "C": (27_906_000.0, 55.0)}
@@ -225,7 +228,7 @@ def _needed_s(rows: Rows, reachable: Flags, share: float) -> float | None:
     if not 0.0 < before < share:
         return None
     missing = math.log1p(-share)
-    steepness = math.log(missing / math.log1p(-before)) / math.log(2.0)
+    steepness = min(max(math.log(missing / math.log1p(-before)) / math.log(2.0), FLATTEST), STEEPEST)
     total_s = lasted_s * (math.log1p(-COVERED) / missing) ** (1.0 / steepness)
     return total_s - lasted_s if total_s - lasted_s <= LONGEST_FORECAST_S else None
 

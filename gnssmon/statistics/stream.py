@@ -19,6 +19,10 @@ from gnssmon.statistics.subject import EVERYTHING, Site, Span
 HERE = "this program's own definition"
 GAP = 1.5
 """Steps longer than so many intervals are gaps."""
+CLOSE = 0.25
+"""Steps this close to the commonest one, as a share of it, are of the same rate."""
+REGULAR = 0.9
+"""Share of the close steps from which on the commonest one alone is the interval."""
 MOST_GAPS = 200
 """Gaps told of in the picture, the latest ones."""
 
@@ -186,6 +190,16 @@ def _shares(counts: _Counts, verified: int) -> dict[str, float]:
     return found
 
 
+def _interval_ms(steps: npt.NDArray[np.int64], weight: npt.NDArray[np.float64]) -> float:
+    """The commonest step; where steps change by some milliseconds (three a second: 333, 333, 334), the mean of those
+    close to it, for else a day would be short of some epochs."""
+    commonest = int(steps[weight.argmax()])
+    close = np.abs(steps - commonest) <= CLOSE * commonest
+    if weight.max() >= REGULAR * weight[close].sum():
+        return float(commonest)
+    return float((steps[close] @ weight[close]) / weight[close].sum())
+
+
 class _Times:
     """Steps between epochs, from runs of equal step."""
 
@@ -196,13 +210,13 @@ class _Times:
         forward = (step > 0) & (weight > 0)
         self.steps_back = int((between < 0).sum())
         self.duration_ms = int((step * weight)[forward].sum())
-        self.interval_ms = 0
+        self.interval_ms = 0.0
         self.completeness = 1.0
         self.gaps_ms = np.empty(0, dtype=np.int64), np.empty(0, dtype=np.int64)
         if not forward.any():
             return
         steps, which = np.unique(step[forward], return_inverse=True)
-        self.interval_ms = int(steps[np.bincount(which, weights=weight[forward]).argmax()])
+        self.interval_ms = _interval_ms(steps, np.bincount(which, weights=weight[forward]).astype(np.float64))
         due = round(self.duration_ms / self.interval_ms) + 1 + self.steps_back
         self.completeness = min(1.0, int(runs.count.sum()) / due)
         limit = GAP * self.interval_ms

@@ -21,7 +21,7 @@ from gnssmon.statistics.catalogue import QUANTITIES, find
 from gnssmon.statistics.subject import Site, Span
 
 SITE = Site(reference=(45.07, 7.68, 291.8), mask_deg=10.0, baud=115_200)
-UNITS = {"1", "B/s", "count", "dB-Hz", "deg", "m", "mm/h", "s", "share"}
+UNITS = {"1", "B/s", "count", "dB-Hz", "deg", "m", "mm/h", "ppm", "s", "share"}
 
 
 @functools.cache
@@ -113,7 +113,7 @@ def test_every_answer_is_a_quantity(name):
 
 def test_every_quantity_is_explained():
     """Unit, meaning and source are there; the name ends in its unit where it has one."""
-    suffixes = {"m": "_m", "s": "_s", "deg": "_deg", "dB-Hz": "_dbhz"}
+    suffixes = {"m": "_m", "ppm": "_ppm", "s": "_s", "deg": "_deg", "dB-Hz": "_dbhz"}
     for quantity in QUANTITIES:
         assert quantity.unit in UNITS, quantity
         assert quantity.meaning.endswith("."), quantity
