@@ -34,6 +34,8 @@ class SkyBlocked(Check):
         low = facts.pictures.sky.horizon_low_deg
         if not np.isfinite(horizon).sum() >= 6:
             return CannotSay("too little of the horizon has been probed")
+        if isinstance(LevelsLow.check(facts), Found):
+            return CannotSay("all signals are weak: what is lost low down is no horizon")
         limit = facts.pictures.sky.mask_deg + SkyBlocked.MARGIN_DEG
         # The interval's lower end counts: only what is surely hidden is held against the site.
         hidden = np.nan_to_num(low, nan=0.0) > limit

@@ -132,6 +132,14 @@ def test_blocked_sector_is_named_by_its_edges():
     assert (across.evidence["azimuth_from_deg"], across.evidence["azimuth_to_deg"]) == (340, 30)
 
 
+def test_weak_signals_are_no_horizon():
+    """Where all levels are low, low satellites are lost without anything in their way."""
+    weak = replace(_weak(34.0), sky=_shadow(35.0, 0, 36).sky)
+
+    assert isinstance(sky.SkyBlocked.check(facts(drawn=weak)), CannotSay)
+    assert isinstance(sky.LevelsLow.check(facts(drawn=weak)), Found)
+
+
 def test_one_narrow_sector_is_not_held_against_the_site():
     """A single sector of ten degrees may be a single satellite's pass."""
     assert isinstance(sky.SkyBlocked.check(facts(drawn=_shadow(35.0, 5, 6))), Fine)
