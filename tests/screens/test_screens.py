@@ -177,6 +177,42 @@ async def test_nothing_of_a_hostile_stream_is_obeyed(tmp_path: Path) -> None:
                     assert strip.text.isascii()
 
 
+async def test_other_themes_and_the_palette(tmp_path: Path) -> None:
+    """A theme of the screen library may be chosen while running; the palette opens and closes."""
+    async with running(tmp_path, snapshots.stream(20)) as (app, pilot):
+        shown = await until(app, lambda t: "ended" in t)
+        for theme in ("textual-light", "textual-dark", "ansi-light", "ansi-dark"):
+            app.theme = theme
+            await pilot.pause()
+            assert text(app) == shown
+        await pilot.press("ctrl+p")
+        await pilot.pause()
+        assert type(app.screen).__name__ == "CommandPalette"
+        await pilot.press("escape")
+
+
+async def test_events_are_jumped_to(tmp_path: Path) -> None:
+    """Brackets go to the gap before and the one after."""
+    data = snapshots.stream(60) + snapshots.stream(60, start_s=36_100) + snapshots.stream(60, start_s=36_200)
+    async with running(tmp_path, data) as (app, pilot):
+        await until(app, lambda t: "ended" in t)
+        player = app._feed.player
+        assert player is not None
+        at_ms = [player.axis_ms or 0]
+        while at_ms[-1] > 36_059_000:  # the last epoch before the first gap
+            await pilot.press("left_square_bracket")
+            await until(app, lambda _: (player.axis_ms or at_ms[-1]) < at_ms[-1] and not player.rewound)
+            await until(app, lambda t: "PAUSED" in t)
+            at_ms.append(player.axis_ms or 0)
+        assert at_ms[-1] == 36_059_000
+        assert 36_159_000 in at_ms  # the one before the second
+        while at_ms[-1] < 36_159_000:
+            await pilot.press("right_square_bracket")
+            await pilot.pause(0.1)
+            at_ms.append(player.axis_ms or 0)
+            assert at_ms[-1] >= at_ms[-2]
+
+
 async def test_no_data_is_said_in_words(tmp_path: Path) -> None:
     """An empty log gives words, not an empty screen."""
     async with running(tmp_path, b"") as (app, _):

@@ -46,16 +46,16 @@ def _figures(snapshot: Snapshot) -> list[tuple[str, str, str]]:
     text = "none" if not gaps else f"{gaps:.0f}, longest {number(longest)} s"
     rows.append(("Gaps", text, ""))
     failures = value(snapshot, "stream.checksum_failure_share")
-    errors = [f"{facts.checksum_failures} checksums, {percent(failures)}"] if facts.checksum_failures else []
-    errors += [f"{facts.malformed} malformed"] if facts.malformed else []
-    text = ", ".join(errors) or "none"
-    rows.append(("Errors", text, "doubt" if (failures or 0.0) > 0.001 else ""))
+    text = "all right" if not facts.checksum_failures else f"{facts.checksum_failures} wrong, {percent(failures)}"
+    rows.append(("Checksums", text, "doubt" if (failures or 0.0) > 0.001 else ""))
     rate, load = value(snapshot, "stream.bytes_per_s"), value(snapshot, "stream.link_load")
-    text = "–" if rate is None else f"{rate:.0f} B/s" + (f", {percent(load)} of the line" if load is not None else "")
+    text = "–" if rate is None else f"{rate:.0f} B/s" + (f", load {load * 100:.0f} %" if load is not None else "")
     rows.append(("Rate", text, "doubt" if (load or 0.0) > 0.8 else ""))
     rows.append(("Received", f"{words.size(facts.bytes)}, {facts.sentences} sentences", ""))
     epochs, duration = value(snapshot, "stream.epochs"), value(snapshot, "stream.duration_s")
     rows.append(("Epochs", f"{number(epochs, 0)} in {number(duration, 0)} s", ""))
+    if facts.malformed:
+        rows.append(("Malformed", f"{facts.malformed} sentences", ""))
     if facts.non_nmea_bytes:
         rows.append(("Other bytes", words.size(facts.non_nmea_bytes), ""))
     if facts.unverified:
@@ -81,7 +81,8 @@ def _types(grid: Grid, snapshot: Snapshot, y: int) -> int:
         grid.put(0, y + 1 + i, name, "strong", 8)
         grid.right(19, y + 1 + i, str(count))
         grid.right(29, y + 1 + i, f"{count / epochs:.2f}" if epochs else "", "")
-        grid.put(31, y + 1 + i, MEANINGS.get(name, ""), "quiet", max(0, grid.width - 31))
+        if grid.width >= 50:
+            grid.put(31, y + 1 + i, MEANINGS.get(name, ""), "quiet", grid.width - 31)
     return y + 1 + min(most, len(by_type))
 
 

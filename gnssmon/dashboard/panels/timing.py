@@ -30,7 +30,7 @@ def render(snapshot: Snapshot, size: Size) -> Grid:
         ("  95 % below", f"{number(worst, 3)} s" if not _absurd(worst) else "–"),
         ("  jitter", f"{number(jitter, 3)} s"),
         ("Clock steps", number(steps, 0)),
-        ("Corrections", "none" if age is None else f"{number(age)} s old median, {number(oldest)} s at most"),
+        ("Corrections", "none" if age is None else f"{number(age)} s old, worst {number(oldest)} s"),
         ("First fix after", "–" if first is None else f"{number(first)} s"),
         ("Longest outage", "–" if lost is None else f"{number(lost)} s"),
     ]

@@ -67,7 +67,9 @@ def _criterion(grid: Grid, y: int, one: Judged, wide: bool) -> None:
     x = grid.put(0, y, f"{mark} ", tone)
     if not wide:
         text = f"{found} {limit}" if one.value is not None else "unknown"
-        grid.put(x, y, one.quantity, "", max(4, grid.width - 3 - len(text)))
+        room = max(4, grid.width - 3 - len(text))
+        name = one.quantity if len(one.quantity) <= room else one.quantity.partition(".")[2]
+        grid.put(x, y, name, "", room)
         grid.right(grid.width, y, text, tone if one.result != "met" else "")
         return
     interval = words.interval(one.interval, one.unit, one.quantity)
