@@ -60,12 +60,12 @@ def test_sums_by_minute_and_column(rows):
 
 
 @given(samples, minutes, st.integers(0, 100))
-def test_a_window_takes_the_minutes_that_it_touches(rows, begin, length):
-    """From and to are half-open; a minute that is touched counts whole."""
+def test_a_window_takes_whole_minutes(rows, begin, length):
+    """From the minute that it begins in, without the one that it ends in, unless they are the same."""
     tiles = filled(rows)
     from_ms, to_ms = begin * 60_000 + 20_000, (begin + length) * 60_000 + 20_000
 
-    expected = {key: value for key, value in by_hand(rows).items() if begin <= key[0] <= begin + length}
+    expected = {key: value for key, value in by_hand(rows).items() if begin <= key[0] < begin + max(length, 1)}
     assert expected == table_of(tiles, from_ms, to_ms)
     column, values = tiles.total(from_ms, to_ms)
     assert sum(value[1] for value in expected.values()) == values[:, 1].sum()
