@@ -25,7 +25,8 @@ MOST_LINES = 200
 MOST_TEXTS = 20
 
 LATEST_SENTENCES = 1000
-"""How far back in one block the satellites in view are looked for: thirty full bursts."""
+"""How far back in one block the satellites in view are looked for: thirty full bursts. Of several blocks of a log,
+each larger than this, only the last one is looked into before somebody asks."""
 
 LONGEST_SILENCE = 500
 """A sentence type that has not come for so many sentences no longer speaks for the position."""
@@ -99,6 +100,7 @@ class Receiver:
         self._now: EpochBatch | None = None  # the latest epoch alone
         self._last_fix_axis_ms: int | None = None
         self._in_view = InView()
+        self._unseen: Block | None = None  # the last block, before its satellites are looked at
         self._used_closed: dict[int, set[int]] = {}  # by system index, of the last closed epoch with GSA
         self._used_opened: dict[int, set[int]] = {}
         self._dop: tuple[float | None, float | None, float | None] = (
@@ -118,10 +120,19 @@ class Receiver:
         if not len(block.sentences):
             return
         self._newest = int(block.sentences.sequence[-1])
-        self._take_lines(block.sentences)
         self._take_values(block.columns)
-        first = max(int(block.sentences.sequence[0]), self._newest + 1 - LATEST_SENTENCES)
-        self._in_view.update(block.columns, first, self._newest + 1 - first)
+        if len(block.sentences) < LATEST_SENTENCES:
+            self._take_unseen()
+        self._unseen = block
+
+    def _take_unseen(self) -> None:
+        block, self._unseen = self._unseen, None
+        if block is None:
+            return
+        self._take_lines(block.sentences)
+        last = int(block.sentences.sequence[-1])
+        first = max(int(block.sentences.sequence[0]), last + 1 - LATEST_SENTENCES)
+        self._in_view.update(block.columns, first, last + 1 - first)
 
     def _take_lines(self, sentences: Sentences) -> None:
         for row in range(max(0, len(sentences) - MOST_LINES), len(sentences)):
@@ -168,6 +179,7 @@ class Receiver:
 
     def state(self) -> ReceiverState:
         """Return a frozen view of the latest values."""
+        self._take_unseen()
         position = self._speaking("position")
         velocity, heading = self._speaking("velocity", "speed_mps"), self._speaking("heading", "heading_deg")
         pdop, hdop, vdop = self._dop
