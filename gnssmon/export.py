@@ -17,7 +17,7 @@ import numpy.typing as npt
 
 from gnssmon import utc
 from gnssmon.constellations import identity
-from gnssmon.epochs.batch import EpochBatch
+from gnssmon.epochs.batch import EpochBatch, SignalRows, UsedRows
 from gnssmon.errors import ConfigurationError, OutputError
 from gnssmon.printable import printable
 
@@ -42,8 +42,6 @@ EPOCH_COLUMNS: dict[str, Callable[[EpochBatch], npt.NDArray[np.generic]]] = {
 }
 """Beside ``utc`` and ``axis_ms``; -1 and NaN become empty."""
 
-SIGNAL_NAMES = ("utc", "axis_ms", "satellite", "signal", "elevation_deg", "azimuth_deg", "cn0_dbhz", "used")
-
 
 def epoch_table(batch: EpochBatch) -> Columns:
     """Counted epochs, one row each."""
@@ -57,25 +55,41 @@ def epoch_table(batch: EpochBatch) -> Columns:
 def signal_table(batch: EpochBatch) -> Columns:
     """Satellites and signals as listed, one row each."""
     rows = batch.signals
-    used = set(zip(batch.used.epoch.tolist(), batch.used.satellite.tolist(), strict=True))
-    satellite = rows.satellite.tolist()
-    labels = [
-        identity.signal_label(code // identity.SYSTEM_STEP, signal)
-        for code, signal in zip(satellite, rows.signal.tolist(), strict=True)
-    ]
+    instants = _instants(batch, np.arange(len(batch)))
     return {
-        "utc": _instants(batch, rows.epoch),
+        "utc": [instants[epoch] for epoch in rows.epoch.tolist()],
         "axis_ms": batch.axis_ms[rows.epoch].tolist(),
-        "satellite": [identity.label(code) for code in satellite],
-        "signal": labels,
+        "satellite": _named(rows.satellite.astype(np.int64), identity.label),
+        "signal": _named(rows.satellite // identity.SYSTEM_STEP * SIGNAL_STEP + rows.signal + 1, _signal_label),
         "elevation_deg": _plain(rows.elevation_deg),
         "azimuth_deg": _plain(rows.azimuth_deg),
         "cn0_dbhz": _plain(rows.cn0_dbhz),
-        "used": [pair in used for pair in zip(rows.epoch.tolist(), satellite, strict=True)],
+        "used": np.isin(_pairs(rows), _pairs(batch.used)).tolist(),
     }
 
 
-def _instants(batch: EpochBatch, rows: npt.NDArray[np.generic]) -> list[str]:
+SIGNAL_STEP = 1024
+"""More than there are rows of ``constellations.systems.SIGNALS``."""
+
+
+def _signal_label(key: int) -> str:
+    system, signal = divmod(key, SIGNAL_STEP)
+    return identity.signal_label(system, signal - 1)
+
+
+def _named(keys: npt.NDArray[np.integer], name: Callable[[int], str]) -> list[str]:
+    """The name of each key; few keys are different, and only those are named."""
+    different, place = np.unique(keys, return_inverse=True)
+    names = [name(key) for key in different.tolist()]
+    return [names[i] for i in place.tolist()]
+
+
+def _pairs(rows: SignalRows | UsedRows) -> npt.NDArray[np.int64]:
+    """Epoch and satellite as one number."""
+    return rows.epoch.astype(np.int64) << 32 | rows.satellite
+
+
+def _instants(batch: EpochBatch, rows: npt.NDArray[np.integer]) -> list[str]:
     """ISO 8601 with Z; only the time of day while no date is known."""
     return [
         utc.iso(at_ms) if at_ms >= 0 else utc.time_of_day(axis_ms)
@@ -85,11 +99,11 @@ def _instants(batch: EpochBatch, rows: npt.NDArray[np.generic]) -> list[str]:
 
 def _plain(column: npt.NDArray[np.generic]) -> list[Any]:
     """Python numbers; None for what was not stated. Single precision is printed with the digits that it holds."""
-    if column.dtype == np.float32:
-        return [None if value != value else round(value, 2) for value in column.tolist()]
-    if np.issubdtype(column.dtype, np.floating):
-        return [None if value != value else value for value in column.tolist()]
-    return [None if value < 0 else value for value in column.tolist()]
+    known = np.isfinite(column) if np.issubdtype(column.dtype, np.floating) else np.greater_equal(column, 0)
+    values: list[Any] = (np.round(column.astype(np.float64), 2) if column.dtype == np.float32 else column).tolist()
+    for i in np.flatnonzero(~known).tolist():
+        values[i] = None
+    return values
 
 
 class TableFile(Protocol):

@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import csv
+import functools
 import json
+import operator
 from pathlib import Path
 
 import pynmea2
@@ -118,3 +120,25 @@ def test_a_failure_leaves_the_old_file(tmp_path):
 
     assert [path.name for path in tmp_path.iterdir()] == ["x.csv"]
     assert target.read_text() == "old"
+
+
+def test_what_was_not_stated_stays_empty(tmp_path):
+    """A satellite without a level or a direction, and an epoch without a height, leave empty fields, not zeros."""
+    log = tmp_path / "sparse.nmea"
+    sentences = ("GPGGA,120000.00,4800.0000,N,01100.0000,E,1,05,1.2,,M,,M,,", "GPGSV,1,1,02,07,45,120,,09,,,38")
+    checksums = [functools.reduce(operator.xor, sentence.encode()) for sentence in sentences]
+    log.write_text("".join(f"${s}*{c:02X}\r\n" for s, c in zip(sentences, checksums, strict=True)))
+    tables = []
+    for name, options in (("epochs.csv", ()), ("signals.csv", ("--signals",))):
+        assert gnssmon("export", str(log), "--to", str(tmp_path / name), *options).returncode == 0
+        with (tmp_path / name).open(newline="") as file:
+            tables.append(list(csv.DictReader(file)))
+
+    (epoch,), signals = tables
+    assert (epoch["altitude_m"], epoch["ellipsoidal_height_m"], epoch["pdop"], epoch["hdop"]) == ("", "", "", "1.2")
+    fields = ("satellite", "signal", "elevation_deg", "azimuth_deg", "cn0_dbhz", "used")
+    assert [tuple(row[field] for field in fields) for row in signals] == [
+        ("G07", "G", "45.0", "120.0", "", "False"),
+        ("G09", "G", "", "", "38.0", "False"),
+    ]
+    assert epoch["utc"] == signals[0]["utc"] == "T12:00:00.000Z"
