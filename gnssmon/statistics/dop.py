@@ -15,7 +15,7 @@ from gnssmon.estimators.tiles import Tiles
 from gnssmon.geodesy.dop import dilution
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity, exact
 from gnssmon.statistics.estimates import quantile_estimate
-from gnssmon.statistics.grid import CODES, azimuths_deg, elevations_deg, grid_of
+from gnssmon.statistics.grid import CODES, azimuths_deg, elevations_deg, grid_of, portions
 from gnssmon.statistics.subject import EVERYTHING, Site, Span
 
 Floats = npt.NDArray[np.float64]
@@ -84,7 +84,8 @@ class Dop:
         """Take in closed epochs."""
         if not len(batch):
             return
-        self._recompute(batch)
+        for part in portions(batch):
+            self._recompute(part)
         counted = np.flatnonzero(batch.counted & (batch.quality != 0))
         values = {name: getattr(batch, name)[counted] for name in REPORTED_NAMES}
         minute = batch.minute[counted]

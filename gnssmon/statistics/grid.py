@@ -10,6 +10,7 @@ satellite that an epoch lists twice on one signal (receivers that name no signal
 from __future__ import annotations
 
 import functools
+import itertools
 from dataclasses import dataclass
 from typing import TypeVar
 
@@ -39,6 +40,10 @@ ZERO_ELEVATION = 900
 UNKNOWN_DIRECTION, NOT_LISTED = -1, -2
 REPEATS = 8
 """Times that one epoch may list one satellite on one signal; more are noise and the last counts."""
+MOST_CELLS = 2_000_000
+"""Lines times epochs of one matrix, some 12 MB; a real sky has 200 lines, noise may have any number."""
+MOST_RUNS = 64
+"""Minutes of one matrix: histograms by the minute are laid out in full."""
 FEW_ROWS = 4096
 """Below this sorting the keys is quicker than a table of all that there may be."""
 
@@ -119,12 +124,25 @@ def elevations_deg(direction: npt.NDArray[np.int32]) -> Floats:
 
 
 @functools.lru_cache(maxsize=1)
+def portions(batch: EpochBatch) -> tuple[EpochBatch, ...]:
+    """The batch, or parts of it where its matrices or histograms by the minute would be too large; none of nothing."""
+    count = len(batch)
+    if not count:
+        return ()
+    most = max(1, MOST_CELLS // max(1, len(_lines(batch)[1])))
+    run = _runs(batch.minute)
+    if count <= most and len(run) <= MOST_RUNS:
+        return (batch,)
+    edges = np.unique(np.concatenate([np.arange(0, count, most), run[::MOST_RUNS], [count]])).tolist()
+    return tuple(batch.part(first, last) for first, last in itertools.pairwise(edges))
+
+
+@functools.lru_cache(maxsize=1)
 def grid_of(batch: EpochBatch) -> Grid:
-    """The satellites of a batch of at least one epoch; the last one is kept, for several subjects ask in turn."""
+    """The satellites of one of ``portions``; the last one is kept, for several subjects ask in turn."""
     rows, count = batch.signals, len(batch)
     epoch = rows.epoch.astype(np.int64)
-    key = rows.satellite * np.int32(SIGNAL_STEP) + (rows.signal - np.int16(NOT_STATED))
-    line, place = _distinct(key)
+    key, line, place = _lines(batch)
     wide = _width(count)
     cell = place * wide
     cell += epoch
@@ -138,7 +156,7 @@ def grid_of(batch: EpochBatch) -> Grid:
     owner = line // SIGNAL_STEP
     first = np.flatnonzero(np.diff(owner, prepend=-1))
     minute = batch.minute
-    run = np.flatnonzero(np.diff(minute, prepend=minute[0] - 1))
+    run = _runs(minute)
     return Grid(
         line=line,
         level=level[:, :count],
@@ -166,6 +184,19 @@ def strongest_sums(grid: Grid) -> Ints:
         return np.asarray(grid.best.sum(axis=0, dtype=np.int64))
     ordered = np.partition(grid.best.T.copy(), satellites - STRONGEST, axis=1)
     return np.asarray(ordered[:, satellites - STRONGEST :].sum(axis=1, dtype=np.int64))
+
+
+@functools.lru_cache(maxsize=1)
+def _lines(batch: EpochBatch) -> tuple[npt.NDArray[np.int32], Ints, npt.NDArray[np.intp]]:
+    """Key of each row, distinct keys, and which of them each row has."""
+    rows = batch.signals
+    key = rows.satellite * np.int32(SIGNAL_STEP) + (rows.signal - np.int16(NOT_STATED))
+    return key, *_distinct(key)
+
+
+def _runs(minute: Ints) -> npt.NDArray[np.intp]:
+    """First epoch of each run of equal minutes."""
+    return np.flatnonzero(np.diff(minute, prepend=minute[0] - 1))
 
 
 def _distinct(key: npt.NDArray[np.integer]) -> tuple[Ints, npt.NDArray[np.intp]]:

@@ -17,7 +17,7 @@ import numpy as np
 import numpy.typing as npt
 
 from gnssmon.epochs.batch import EpochBatch
-from gnssmon.statistics.grid import LABELS, grid_of, label_numbers, strongest_mean
+from gnssmon.statistics.grid import LABELS, grid_of, label_numbers, portions, strongest_mean
 from gnssmon.statistics.subject import Site
 
 Floats = npt.NDArray[np.float64]
@@ -73,7 +73,7 @@ def _levels(batch: EpochBatch, label: str | None = None) -> tuple[Floats, Floats
 
 def _strongest4(batch: EpochBatch, site: Site) -> tuple[Floats, Floats]:
     """Mean of the four strongest satellites of every epoch that has as many."""
-    mean = strongest_mean(grid_of(batch))
+    mean = np.concatenate([np.empty(0), *(strongest_mean(grid_of(part)) for part in portions(batch))])
     return np.nan_to_num(mean), np.isfinite(mean).astype(np.float64)
 
 

@@ -34,8 +34,10 @@ POWERS = 4
 STIFFNESS = 0.0025
 """(1 dB / 20 dB)² minutes."""
 TURNS = 12
+SETTLED_DB = 0.01
+"""Turns end when no offset moves by more."""
 ROBUST_TURNS = 4
-MOST_ROWS = 20_000
+MOST_ROWS = 10_000
 """Rows that the turns are made with; more are first joined to blocks."""
 BLOCKS_MINUTES = (1, 2, 5, 10, 20, 60)
 SETTLING_MINUTES = 30.0
@@ -167,11 +169,14 @@ def _curve_and_offsets(levels: _Levels, line: Ints, signals: int) -> tuple[Float
         right = np.stack([_summed(levels.signal, rest * power[:, i], signals) for i in range(POWERS)], axis=1)
         curve = np.asarray(np.linalg.solve(normal, right[:, :, None])[:, :, 0], dtype=np.float64)
         rest = levels.level_dbhz - _at(curve, levels)
+        before = offset
         offset = _summed(of_line, (rest - common) * levels.count, len(line)) / (minutes + SETTLING_MINUTES)
         found = _huber(times, rest - offset[of_line], levels.signal)
         # What is common is counted from its mean: the curve holds the level itself.
         middle = _ratio(_summed(levels.signal, found[times], signals), np.bincount(levels.signal, minlength=signals))
         common = found[times] - middle[levels.signal]
+        if not (np.abs(offset - before) > SETTLED_DB).any():
+            break
     return curve, offset
 
 

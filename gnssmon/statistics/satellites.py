@@ -14,7 +14,7 @@ from gnssmon.estimators.series import Series
 from gnssmon.estimators.tiles import Tiles
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity, exact
 from gnssmon.statistics.estimates import mean_estimate
-from gnssmon.statistics.grid import CODES, grid_of
+from gnssmon.statistics.grid import CODES, grid_of, portions
 from gnssmon.statistics.subject import EVERYTHING, Site, Span
 
 HERE = "this program's own definition"
@@ -65,8 +65,10 @@ class Satellites:
 
     def update(self, batch: EpochBatch) -> None:
         """Take in closed epochs."""
-        if not len(batch):
-            return
+        for part in portions(batch):
+            self._take(part)
+
+    def _take(self, batch: EpochBatch) -> None:
         grid = grid_of(batch)
         listed, tracked = grid.listed, grid.tracked
         in_view = listed.sum(axis=0)

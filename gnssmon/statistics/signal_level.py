@@ -23,6 +23,7 @@ from gnssmon.statistics.grid import (
     elevations_deg,
     grid_of,
     labels_of_lines,
+    portions,
     strongest_sums,
 )
 from gnssmon.statistics.level_curve import BAND_DEG, BANDS
@@ -80,9 +81,13 @@ class SignalLevel:
 
     def update(self, batch: EpochBatch) -> None:
         """Take in closed epochs."""
-        if not len(batch) or not len(batch.signals.epoch):
+        if not len(batch.signals.epoch):
             return
         self._answers.clear()
+        for part in portions(batch):
+            self._take(part)
+
+    def _take(self, batch: EpochBatch) -> None:
         grid = grid_of(batch)
         self._looks.update(grid)
         self._count(grid)

@@ -15,7 +15,7 @@ from gnssmon.estimators.tiles import Tiles
 from gnssmon.estimators.uncertainty import share_interval
 from gnssmon.geodesy import directions
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity, exact
-from gnssmon.statistics.grid import CODES, grid_of
+from gnssmon.statistics.grid import CODES, grid_of, portions
 from gnssmon.statistics.horizon import Horizon, horizon, passes
 from gnssmon.statistics.looks import Looks, Rows
 from gnssmon.statistics.pictures import (
@@ -109,9 +109,11 @@ class Sky:
 
     def update(self, batch: EpochBatch) -> None:
         """Take in closed epochs."""
-        if not len(batch):
-            return
         self._read = None
+        for part in portions(batch):
+            self._take(part)
+
+    def _take(self, batch: EpochBatch) -> None:
         grid = grid_of(batch)
         self._looks.update(grid)
         fixed = batch.fixed_position

@@ -3,14 +3,18 @@
 from __future__ import annotations
 
 import dataclasses
+import tracemalloc
 
 import numpy as np
+import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
 from gnssmon.epochs.batch import SignalRows
 from gnssmon.statistics import grid as grids
 from gnssmon.statistics.grid import azimuths_deg, elevations_deg, grid_of, strongest_mean
+from gnssmon.statistics.signal_level import SignalLevel
+from gnssmon.statistics.subject import Site
 from tests.statistics.batches import make_batch
 
 row = st.tuples(
@@ -95,3 +99,42 @@ def test_fewer_than_four_satellites_have_no_four_strongest():
     found = strongest_mean(grid_of(batch_of(rows)))
 
     np.testing.assert_array_equal(found, [np.nan, 41.5, 42.5, np.nan, np.nan])
+
+
+def noise(epochs: int, each: int, *, step_ms: int):
+    """Epochs that list satellites which nobody has."""
+    rng = np.random.default_rng(1)
+    count = epochs * each
+    signals = SignalRows(
+        np.repeat(np.arange(epochs), each).astype(np.int32),
+        rng.integers(0, 8192, count).astype(np.int32),
+        rng.integers(-1, 48, count).astype(np.int16),
+        rng.integers(0, 90, count).astype(np.float32),
+        rng.integers(0, 360, count).astype(np.float32),
+        rng.integers(10, 99, count).astype(np.float32),
+    )
+    return dataclasses.replace(make_batch(np.arange(epochs) * step_ms), signals=signals)
+
+
+def test_noise_does_not_fill_the_memory():
+    """Two thousand epochs that list a hundred random satellites each, a minute apart: taken in portions, none of whose
+    matrices is large; levels are the same as those of the plain list."""
+    batch = noise(2000, 100, step_ms=60_000)
+    level = SignalLevel(Site())
+    tracemalloc.start()
+    level.update(batch)
+    _, peak = tracemalloc.get_traced_memory()
+    tracemalloc.stop()
+
+    parts = grids.portions(batch)
+    assert sum(len(part) for part in parts) == 2000
+    assert all(grid_of(part).level.size <= 2 * grids.MOST_CELLS for part in parts)
+    assert peak < 250e6
+    mean = level.summary()["cn0.mean_dbhz"]
+    assert (mean.value, mean.samples) == (pytest.approx(batch.signals.cn0_dbhz.astype(float).mean()), 200_000)
+
+
+def test_an_ordinary_batch_is_one_portion():
+    """Nothing is cut without need."""
+    batch = noise(60, 30, step_ms=1000)
+    assert grids.portions(batch) == (batch,)
