@@ -25,6 +25,10 @@ USUAL_SLOTS = 12
 """Satellite numbers in a GSA sentence; some receivers send more or fewer places."""
 MOST_SLOTS = 64
 GSA_HEAD, GSV_HEAD, GROUP = 2, 3, 4
+USUAL_GROUP = ",nn,ee,aaa,cc"
+"""Number, elevation, azimuth and level of a GSV sentence, as receivers print nearly all of them."""
+USUAL_FIELDS = ((1, 3), (4, 6), (7, 10), (11, 13))
+"""Where its digits begin and end."""
 
 _FORMATTER = np.uint64(0xFFFFFF)
 """The last three letters of an address as a number."""
@@ -220,10 +224,7 @@ def _gsv(lines: _Lines) -> tuple[dict[str, Column], SatelliteRows]:
         return {"signal_id": signal_id}, _no_satellites()
     before = np.cumsum(groups) - groups
     at = np.repeat(lines.first + GSV_HEAD - GROUP * before, groups) + GROUP * np.arange(len(sentence))
-    edges = [lines.marks[at + i] for i in range(GROUP + 1)]
-    number, elevation_deg, azimuth_deg, cn0_dbhz = (
-        numbers.small_numbers(lines.buffer, edges[i] + 1, edges[i + 1]) for i in range(GROUP)
-    )
+    number, elevation_deg, azimuth_deg, cn0_dbhz = _groups(lines, at)
     cn0_dbhz[~(cn0_dbhz > 0)] = np.nan
     given = _as_satellite(number)
     present = given >= 0
@@ -234,6 +235,29 @@ def _gsv(lines: _Lines) -> tuple[dict[str, Column], SatelliteRows]:
         sentence, given = sentence[keep], given[keep]
         elevation_deg, azimuth_deg, cn0_dbhz = elevation_deg[keep], azimuth_deg[keep], cn0_dbhz[keep]
     return {"signal_id": signal_id}, SatelliteRows(sentence, given, elevation_deg, azimuth_deg, cn0_dbhz)
+
+
+def _groups(lines: _Lines, at: Offsets) -> list[npt.NDArray[np.float32]]:
+    """Number, elevation, azimuth and level of groups that begin at the marks ``at``, an array each."""
+    begin, end = lines.marks[at], lines.marks[at + GROUP]
+    size = len(USUAL_GROUP)
+    text = numbers.records(lines.buffer, np.minimum(begin, len(lines.buffer) - size), size)
+    usual = end - begin == size
+    values = []
+    for first, last in USUAL_FIELDS:
+        usual &= text[first - 1] == ord(",")
+        value = np.zeros(len(at), dtype=np.float32)
+        for digit in text[first:last] - np.uint8(ord("0")):
+            usual &= digit <= 9
+            value *= np.float32(10)
+            value += digit
+        values.append(value)
+    odd = np.flatnonzero(~usual)
+    if len(odd):
+        edges = [lines.marks[at[odd] + i] for i in range(GROUP + 1)]
+        for i, value in enumerate(values):
+            value[odd] = numbers.small_numbers(lines.buffer, edges[i] + 1, edges[i + 1])
+    return values
 
 
 def _satellite_numbers(buffer: npt.NDArray[np.uint8], start: Offsets, end: Offsets) -> npt.NDArray[np.int16]:

@@ -23,6 +23,8 @@ MOST_DIGITS = 18
 EXACT_DIGITS = 15
 """So many are exact in double precision."""
 
+SMALL_DIGITS = 3
+
 LONGEST_NUMBER = 24
 LONGEST_TEXT = 64
 """Characters kept of a field: texts are 61 at most by the standard."""
@@ -143,23 +145,30 @@ def decimals(buffer: Bytes, start: Offsets, end: Offsets) -> Floats:
 def small_numbers(buffer: Bytes, start: Offsets, end: Offsets) -> npt.NDArray[np.float32]:
     """The same for columns that nearly always hold one to three digits: satellite numbers, angles, levels."""
     length = end - start
-    units = buffer[end - 1] - np.uint8(_ZERO)
-    tens = buffer[end - 2] - np.uint8(_ZERO)
-    tens[length < 2] = 0
-    value = units + np.uint8(10) * tens.astype(np.float32)
-    usual = (length > 0) & (length <= 3) & (units <= 9) & (tens <= 9)
-    if int(length.max(initial=0)) > 2:
-        hundreds = buffer[end - 3] - np.uint8(_ZERO)
-        hundreds[length < 3] = 0
-        value += np.float32(100) * hundreds
-        usual &= hundreds <= 9
-    if usual.all():
+    shortest, longest = int(length.min(initial=1)), int(length.max(initial=0))
+    value = np.zeros(len(start), dtype=np.float32)
+    largest = np.zeros(len(start), dtype=np.uint8)
+    for place in range(min(longest, SMALL_DIGITS)):
+        digit = buffer[end - (place + 1)] - np.uint8(_ZERO)
+        if place >= shortest:
+            digit *= length > place
+        np.maximum(largest, digit, out=largest)
+        value += digit * np.float32(10**place)
+    if shortest > 0 and longest <= SMALL_DIGITS and int(largest.max(initial=0)) <= 9:
         return value
+    usual = (length > 0) & (length <= SMALL_DIGITS) & (largest <= 9)
     value[~usual] = np.nan
     odd = np.flatnonzero(~usual & (length > 0))
     if len(odd):
         value[odd] = decimals(buffer, start[odd], end[odd])
     return value
+
+
+def records(buffer: Bytes, start: Offsets, size: int) -> Bytes:
+    """The ``size`` bytes from each start on, shape (size, n); all must lie inside."""
+    # A view of what begins at every byte: whole items of it are copied far quicker than byte by byte.
+    items = np.ndarray((len(buffer) - size + 1,), dtype=f"V{size}", buffer=buffer.data, strides=(1,))
+    return np.ascontiguousarray(items[start].view(np.uint8).reshape(-1, size).T)
 
 
 def times_of_day(buffer: Bytes, start: Offsets, end: Offsets) -> npt.NDArray[np.int64]:
