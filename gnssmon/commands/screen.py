@@ -40,8 +40,9 @@ def screen_options(command: Callable[..., Any]) -> Callable[..., Any]:
 def need_terminal() -> None:
     """Raise ConfigurationError where no dashboard can be drawn."""
     dumb = os.environ.get("TERM", "") in ("", "dumb") and os.name != "nt"
-    if dumb or not sys.stdout.isatty() or not sys.stdin.isatty():
-        why = "TERM is 'dumb'" if dumb else "this is not one"
+    # The screen library writes to standard error.
+    if dumb or not all(stream.isatty() for stream in (sys.stdin, sys.stdout, sys.stderr)):
+        why = "TERM is 'dumb'" if dumb else "this is not one, or its input or output goes elsewhere"
         raise ConfigurationError(f"the dashboard needs a terminal, and {why}; 'gnssmon check SOURCE' needs none")
 
 

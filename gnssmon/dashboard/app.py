@@ -2,14 +2,9 @@
 
 from __future__ import annotations
 
-import asyncio
 import math
 import os
-import select
-import signal
-import sys
 from collections.abc import Iterable
-from contextlib import suppress
 from typing import ClassVar
 
 from textual.app import App, ComposeResult, SystemCommand
@@ -18,6 +13,7 @@ from textual.message import Message
 from textual.screen import Screen
 from textual.widgets import Footer
 
+from gnssmon.dashboard import terminal
 from gnssmon.dashboard.canvas import Canvas
 from gnssmon.dashboard.drawing import Size
 from gnssmon.dashboard.feed import WINDOWS, Feed
@@ -74,7 +70,9 @@ class Dashboard(App[None]):
 
     def __init__(self, feeds: tuple[Feed, ...], *, plain: bool = False) -> None:
         # Without colours, the library would turn the palette's names into grey values, black among them.
-        super().__init__(ansi_color=True if "NO_COLOR" in os.environ else None)
+        super().__init__(
+            driver_class=terminal.driver(self.put_away), ansi_color=True if "NO_COLOR" in os.environ else None
+        )
         self._feeds = feeds
         self._feed = feeds[0]
         self._newest: dict[int, Snapshot] = {}
@@ -85,7 +83,6 @@ class Dashboard(App[None]):
         self._row, self._choice = 0, ""
         self._canvas = Canvas()
         self._painted_s = 0.0
-        self._in_terminal = sys.__stdin__ is not None and sys.__stdin__.isatty()
 
     def compose(self) -> ComposeResult:
         yield self._canvas
@@ -93,20 +90,16 @@ class Dashboard(App[None]):
 
     def on_mount(self) -> None:
         self.theme = "ansi-dark"
-        self._end_on_signals()
         for feed in self._feeds:
             feed.start(lambda snapshot, feed=feed: self._take(feed, snapshot))  # type: ignore[misc]
         self.set_interval(AGE_S, self._grow_older)
         self._paint()
 
-    def _end_on_signals(self) -> None:
-        """A hung-up terminal, or a stop from outside, ends the session as a key would: the recording is closed."""
-        loop = asyncio.get_running_loop()
-        for name in ("SIGHUP", "SIGTERM"):
-            with suppress(NotImplementedError, RuntimeError, AttributeError, ValueError):
-                loop.add_signal_handler(getattr(signal, name), self.exit)
-
     def on_unmount(self) -> None:
+        self.put_away()
+
+    def put_away(self) -> None:
+        """End the sessions: what was received is with the recorders, and those are closed."""
         for feed in self._feeds:
             feed.stop()
 
@@ -125,8 +118,6 @@ class Dashboard(App[None]):
             self._paint()
 
     def _grow_older(self) -> None:
-        if self._in_terminal and _hung_up():
-            self.exit()
         quiet_s = self._feed.clock.steady() - self._painted_s
         if self._frozen is None and self._feed.source.kind == "live" and quiet_s >= max(AGE_S, self._feed.pace_s):
             self._paint()
@@ -260,14 +251,3 @@ class Dashboard(App[None]):
                     "window of time",
                     lambda w=window: self._feed.choose(w),
                 )
-
-
-def _hung_up() -> bool:
-    """Whether the terminal is gone: one that does not control us sends no signal when it goes."""
-    if sys.__stdin__ is None or not hasattr(select, "poll"):
-        return False
-    with suppress(OSError, ValueError):
-        poll = select.poll()
-        poll.register(sys.__stdin__.fileno(), 0)
-        return any(event & (select.POLLHUP | select.POLLERR) for _, event in poll.poll(0))
-    return True
