@@ -78,9 +78,7 @@ def _strongest4(batch: EpochBatch, site: Site) -> tuple[Floats, Floats]:
 
 
 def _in_view(batch: EpochBatch, site: Site) -> tuple[Floats, Floats]:
-    rows = batch.signals
-    pairs = np.unique(rows.epoch.astype(np.int64) << 32 | rows.satellite)
-    count = np.bincount(pairs >> 32, minlength=len(batch)).astype(np.float64)
+    count = np.concatenate([np.empty(0), *(grid_of(part).listed.sum(axis=0) for part in portions(batch))])
     return count, (count > 0).astype(np.float64)
 
 

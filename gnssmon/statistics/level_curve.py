@@ -16,7 +16,7 @@ import numpy as np
 import numpy.typing as npt
 
 from gnssmon.constellations import identity
-from gnssmon.estimators.histogram import quantiles
+from gnssmon.estimators.histogram import deviations, quantiles
 from gnssmon.estimators.tiles import Entries
 from gnssmon.statistics.grid import LABELS, PER_DB, SIGNAL_STEP, labels_of_lines
 from gnssmon.statistics.looks import Rows
@@ -95,6 +95,7 @@ def picture(lines: Entries, spread: Ints, looks: Rows) -> LevelPicture:
         mean_dbhz=mean,
         low_dbhz=quantiles(spread[labels], 0.05),
         high_dbhz=quantiles(spread[labels], 0.95),
+        spread_db=deviations(spread[labels]),
         count=np.rint(number).astype(np.int64),
         minute=minute,
         level_dbhz=level,

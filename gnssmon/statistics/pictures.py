@@ -87,6 +87,8 @@ class LevelPicture:
     minute: Ints
     level_dbhz: Floats
     """Common-mode level per minute, shape (signals, t): free of satellites rising and setting; NaN empty."""
+    spread_db: Floats = field(default_factory=lambda: np.empty((0, 0)))
+    """Standard deviation in each bin, shape (signals, 18), NaN with fewer than two."""
     satellites: tuple[str, ...] = ()
     """``G07``; one entry a satellite and signal, k in all."""
     satellite_signal: npt.NDArray[np.intp] = field(default_factory=lambda: np.empty(0, dtype=np.intp))

@@ -13,7 +13,7 @@ from gnssmon.estimators.series import Series
 from gnssmon.estimators.tiles import Tiles
 from gnssmon.quantities import DEFAULT_CONFIDENCE, NOTHING, Estimate, Quantity
 from gnssmon.statistics import level_curve
-from gnssmon.statistics.estimates import mean_estimate, quantile_estimate
+from gnssmon.statistics.estimates import mean_estimate
 from gnssmon.statistics.grid import (
     LABELS,
     PER_DB,
@@ -183,7 +183,8 @@ class SignalLevel:
         answers["cn0.mean_dbhz"] = mean_estimate(samples, confidence, value=total / count / PER_DB, count=count)
         tenth, counts = self._tenths.total(span.from_ms, span.to_ms)
         median = quantile(tenth / 10.0, counts[:, 0], 0.5)
-        answers["cn0.median_dbhz"] = quantile_estimate(samples, 0.5, confidence, value=median)
+        # Levels of the same satellites rise and fall together: a median is as uncertain as the mean.
+        answers["cn0.median_dbhz"] = mean_estimate(samples, confidence, value=median, count=count)
         _, strongest = self._strongest.total(span.from_ms, span.to_ms)
         if len(strongest):
             epochs, total = strongest[0].tolist()

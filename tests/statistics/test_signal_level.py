@@ -128,6 +128,8 @@ def test_level_against_elevation(batch):
         by_minute = own & (np.floor(elevation / 5 + 1e-9) == band)
         low, high = np.quantile(rows.cn0_dbhz[inside], (0.05, 0.95))
         assert picture.low_dbhz[label, band] == pytest.approx(low, abs=1e-6)
+        spread = rows.cn0_dbhz[inside].astype(float).std(ddof=1)
+        assert picture.spread_db[label, band] == pytest.approx(spread, abs=1e-6)
         assert picture.high_dbhz[label, band] == pytest.approx(high, abs=1e-6)
         assert picture.mean_dbhz[label, band] == pytest.approx(rows.cn0_dbhz[by_minute].astype(float).mean(), abs=1e-6)
         assert picture.count[label, band] == by_minute.sum()
