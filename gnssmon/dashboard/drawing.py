@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import lru_cache
 
 from rich.cells import cell_len
 
@@ -20,7 +21,12 @@ TONES = ("", "strong", "quiet", "title", "good", "doubt", "bad", "line", "one", 
 
 _TONE = {name: number for number, name in enumerate(TONES)}
 
-PLAIN = str.maketrans("·•○●✓✗─│┌┐└┘├┤┬┴┼▲▼█▌░▒←→↑↓–…°±≤≥×σ", ".*oo+x-|+++++++++^v#=:%<>^v-.d~<>xs")
+PLAIN = str.maketrans("·•○●✓✗─│┌┐└┘├┤┬┴┼▲▼█▌░▒←→↑↓–…×σµ", ".*oo+x-|+++++++++^v#=:%<>^v-.xsu") | {
+    ord("°"): "deg",
+    ord("±"): "+-",
+    ord("≤"): "<=",
+    ord("≥"): ">=",
+}
 """What is drawn instead where the terminal knows ASCII only."""
 
 _BRAILLE = ((0x01, 0x08), (0x02, 0x10), (0x04, 0x20), (0x40, 0x80))
@@ -59,13 +65,9 @@ class Grid:
 
     def put(self, x: int, y: int, text: str, tone: str = "", width: int | None = None) -> int:
         """Write ``text`` from cell (x, y) on; beyond ``width`` it ends in an ellipsis. Returns the cell behind it."""
-        if not text.isascii() or not text.isprintable():
-            text = "".join(c if c.isascii() or cell_len(c) == 1 else "?" for c in printable(text))
+        text = _safe(text, self.plain)
         if width is not None and len(text) > width:
-            text = text[: max(0, width - 1)] + "…" * (width > 0)
-        if self.plain and not text.isascii():
-            text = text.translate(PLAIN)
-            text = text if text.isascii() else "".join(c if c.isascii() else "?" for c in text)
+            text = text[: max(0, width - 1)] + (("." if self.plain else "…") * (width > 0))
         if 0 <= y < self.height:
             first, last = max(0, x), min(self.width, x + len(text))
             if first < last:
@@ -75,11 +77,8 @@ class Grid:
 
     def right(self, x: int, y: int, text: str, tone: str = "") -> None:
         """Write ``text`` so that it ends before cell x."""
+        text = _safe(text, self.plain)
         self.put(x - len(text), y, text, tone)
-
-    def centre(self, y: int, text: str, tone: str = "") -> None:
-        """Write ``text`` in the middle of row y."""
-        self.put(max(0, (self.width - len(text)) // 2), y, text, tone, self.width)
 
     def wrap(self, x: int, y: int, text: str, tone: str = "", width: int | None = None, rows: int = 99) -> int:
         """Write ``text`` over several rows, cut between words; returns the row behind it."""
@@ -138,6 +137,17 @@ class Grid:
             for i, character in enumerate(text, x):
                 if 0 <= i < self.width:
                     self.rows[y][i], self.tones[y][i] = character, _TONE[tone]
+
+
+@lru_cache(maxsize=4096)
+def _safe(text: str, plain: bool) -> str:
+    """The text in characters that fill one cell each, and that the terminal knows. A screen says much again."""
+    if not text.isascii() or not text.isprintable():
+        text = "".join(c if c.isascii() or cell_len(c) == 1 else "?" for c in printable(text))
+    if plain and not text.isascii():
+        text = text.translate(PLAIN)
+        text = text if text.isascii() else "".join(c if c.isascii() else "?" for c in text)
+    return text
 
 
 class Plot:

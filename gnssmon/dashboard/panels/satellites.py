@@ -84,7 +84,7 @@ def _band(signal: str) -> str:
 def _column(grid: Grid, x: int, part: list[SatelliteNow], bands: list[str], level: int, bar: int) -> None:
     if not part:
         return
-    grid.put(x, 0, "sat el°", "quiet")
+    grid.put(x, 0, "sat  el", "quiet")
     for i, band in enumerate(bands):
         grid.right(x + HEAD + level * (i + 1), 0, band[: level - 1], "quiet")
     for y, one in enumerate(part, 1):

@@ -9,7 +9,7 @@ import numpy as np
 from gnssmon.dashboard.drawing import Grid, Plot, Size
 from gnssmon.dashboard.panels.panel import SYSTEM_TONES, Panel, nothing, number, percent, value
 from gnssmon.snapshot import Snapshot
-from gnssmon.statistics.pictures import CELL_BLOCKED, CELL_MIXED, CELL_OPEN, CELL_UNREACHABLE, SkyPicture
+from gnssmon.statistics.pictures import CELL_BLOCKED, CELL_MIXED, CELL_OPEN, CELL_UNREACHABLE, Floats, Ints, SkyPicture
 
 BESIDE = 25
 """Cells for the words at the right."""
@@ -72,29 +72,28 @@ def _plot(grid: Grid, snapshot: Snapshot, picture: SkyPicture, width: int) -> No
 
 def _cells(grid: Grid, plot: Plot, picture: SkyPicture) -> None:
     """Fill each cell of the disc by what is known of its part of the sky."""
+    columns, (west, east_end) = np.arange(plot.width), plot.x_range
+    east = west + (columns + 0.5) / plot.width * (east_end - west)
     for y in range(grid.height):
-        for x in range(plot.width):
-            east = plot.x_range[0] + (x + 0.5) / plot.width * (plot.x_range[1] - plot.x_range[0])
-            north = plot.y_range[1] - (y + 0.5) / plot.height * (plot.y_range[1] - plot.y_range[0])
-            elevation = 90.0 - math.hypot(east, north)
-            if elevation < 0.0:
-                continue
-            azimuth = math.degrees(math.atan2(east, north)) % 360.0
-            state = _state(picture, azimuth, elevation)
+        north = plot.y_range[1] - (y + 0.5) / plot.height * (plot.y_range[1] - plot.y_range[0])
+        elevation = 90.0 - np.hypot(east, north)
+        azimuth = np.degrees(np.arctan2(east, north)) % 360.0
+        above = np.flatnonzero(elevation >= 0.0)
+        states = _states(picture, azimuth[above], elevation[above])
+        for x, state in zip(above.tolist(), states.tolist(), strict=True):
             character, tone = MARKS.get(state, ("·", "quiet"))
             if character:
                 grid.put(x, y, character, tone)
 
 
-def _state(picture: SkyPicture, azimuth_deg: float, elevation_deg: float) -> int:
-    inside = (
-        (picture.azimuth_from_deg <= azimuth_deg)
-        & (azimuth_deg < picture.azimuth_to_deg)
-        & (picture.elevation_from_deg <= elevation_deg)
-        & (elevation_deg < picture.elevation_to_deg)
-    )
-    found = np.flatnonzero(inside)
-    return int(picture.state[found[0]]) if len(found) else 0
+def _states(picture: SkyPicture, azimuth_deg: Floats, elevation_deg: Floats) -> Ints:
+    """The state of the part of the sky in each direction; 0, not known, where no part lies there."""
+    if not len(picture.state):
+        return np.zeros(azimuth_deg.shape, dtype=np.int64)
+    azimuth, elevation = azimuth_deg[:, None], elevation_deg[:, None]
+    inside = (picture.azimuth_from_deg <= azimuth) & (azimuth < picture.azimuth_to_deg)
+    inside &= (picture.elevation_from_deg <= elevation) & (elevation < picture.elevation_to_deg)
+    return np.where(inside.any(axis=1), picture.state[inside.argmax(axis=1)].astype(np.int64), 0)
 
 
 def _horizon(grid: Grid, plot: Plot, picture: SkyPicture) -> None:

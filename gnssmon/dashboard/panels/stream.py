@@ -55,7 +55,7 @@ def _figures(snapshot: Snapshot) -> list[tuple[str, str, str]]:
     epochs, duration = value(snapshot, "stream.epochs"), value(snapshot, "stream.duration_s")
     rows.append(("Epochs", f"{number(epochs, 0)} in {number(duration, 0)} s", ""))
     if facts.malformed:
-        rows.append(("Malformed", f"{facts.malformed} sentences", ""))
+        rows.append(("Malformed", f"{facts.malformed} sentence{'s' if facts.malformed > 1 else ''}", ""))
     if facts.non_nmea_bytes:
         rows.append(("Other bytes", words.size(facts.non_nmea_bytes), ""))
     if facts.unverified:
