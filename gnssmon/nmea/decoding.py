@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
+from dataclasses import field as with_default
 
 import numpy as np
 import numpy.typing as npt
@@ -49,16 +50,23 @@ class _Lines:
     """Index into ``marks`` of the one behind the address."""
     count: Offsets
     """Number of fields behind the address."""
+    known: dict[int, Offsets] = with_default(default_factory=dict)
+    """Marks looked up already, by place: a field's end is the next one's start."""
 
     def bounds(self, place: int | Offsets) -> Bounds:
         """Starts and ends of each sentence's field number ``place`` (from 0); empty where it has none."""
         if isinstance(place, int) and len(self.count) and place < int(self.count.min()):
-            at = self.first + place
-            return self.marks[at] + 1, self.marks[at + 1]
+            return self._marks(place) + 1, self._marks(place + 1)
         here = place < self.count
         at = self.first + np.where(here, place, 0)
         start = self.marks[at] + 1
         return start, np.where(here, self.marks[np.minimum(at + 1, len(self.marks) - 1)], start)
+
+    def _marks(self, place: int) -> Offsets:
+        """Each sentence's mark in front of its field ``place``, which it must have, or behind its last."""
+        if place not in self.known:
+            self.known[place] = self.marks[self.first + place]
+        return self.known[place]
 
     def rows(self, chosen: Chosen) -> _Lines:
         return _Lines(self.buffer, self.marks, self.first[chosen], self.count[chosen])

@@ -19,6 +19,7 @@ import numpy.typing as npt
 from gnssmon.chunks import Chunk, joined
 from gnssmon.nmea.checksum import hex_value, xor_between
 from gnssmon.nmea.columns import Sentences, Tally
+from gnssmon.nmea.numbers import records
 from gnssmon.nmea.prefixes import Surroundings, read_surroundings
 from gnssmon.nmea.sentences import SENTENCES
 
@@ -42,8 +43,9 @@ USUAL_KINDS = 100
 
 LF, CR, SPACE, BANG, DOLLAR, STAR, COMMA, DELETE = (ord(c) for c in "\n\r !$*,\x7f")
 
+SPECIAL = (LF, CR, DOLLAR, BANG, STAR)
 _SPECIAL = np.zeros(256, dtype=bool)
-_SPECIAL[[LF, CR, DOLLAR, BANG, STAR]] = True
+_SPECIAL[list(SPECIAL)] = True
 _ADDRESS = np.zeros(256, dtype=bool)
 _ADDRESS[[*range(ord("0"), ord("9") + 1), *range(ord("A"), ord("Z") + 1)]] = True
 
@@ -101,7 +103,7 @@ class Framer:
 
         self._count_failures(found.address[failed])
         self.tally.malformed += int(len(complete) - complete.sum() - plain.sum())
-        accepted = np.flatnonzero(good | plain)
+        accepted = slice(None) if good.all() else np.flatnonzero(good | plain)
         unverified = plain[accepted]
         start, end = found.start[accepted], found.end[accepted]
         tail = np.where(unverified, end, end + 3)
@@ -111,10 +113,10 @@ class Framer:
         inside = int((tail - start + 1).sum())
         self.tally.non_nmea_bytes += len(lines.data) - inside - lost_bytes - found.line_ends - around
         self._count(found.address[accepted], int(unverified.sum()))
-        sequence = np.arange(self._sequence, self._sequence + len(accepted), dtype=np.int64)
-        self._sequence += len(accepted)
+        sequence = np.arange(self._sequence, self._sequence + len(start), dtype=np.int64)
+        self._sequence += len(start)
         if lines.arrivals is None:
-            received_s = np.full(len(accepted), lines.received_s)
+            received_s = np.full(len(start), lines.received_s)
         else:
             received_s = lines.arrivals.at(_line_end(buffer, end))
         return Sentences(
@@ -187,9 +189,10 @@ def _find(buffer: npt.NDArray[np.uint8]) -> _Found:
     marks = np.flatnonzero(buffer <= COMMA)
     kind = buffer[marks]
     others = np.flatnonzero(kind != COMMA)
-    strays = ~_SPECIAL[kind[others]]
+    other_kind = kind[others]
     bad = np.flatnonzero(buffer >= DELETE) if buffer.max() >= DELETE else np.empty(0, dtype=np.int64)
-    if strays.any():
+    if sum(np.count_nonzero(other_kind == special) for special in SPECIAL) < len(others):
+        strays = ~_SPECIAL[other_kind]
         stray = marks[others[strays]]
         control = stray[buffer[stray] < SPACE]
         bad = np.sort(np.concatenate([bad, control]))
@@ -197,7 +200,7 @@ def _find(buffer: npt.NDArray[np.uint8]) -> _Found:
         keep[others[strays]] = False
         marks, kind = marks[keep], kind[keep]
         others = np.flatnonzero(kind != COMMA)
-    other_kind = kind[others]
+        other_kind = kind[others]
     opens = np.flatnonzero((other_kind == DOLLAR) | (other_kind == BANG))
     line_ends = int(np.count_nonzero(other_kind == LF) + np.count_nonzero(other_kind == CR)) - 1
     first_mark, last_mark = others[opens] + 1, others[opens + 1]
@@ -217,19 +220,18 @@ def _addresses(
     buffer: npt.NDArray[np.uint8], start: Offsets, length: Offsets
 ) -> tuple[npt.NDArray[np.bool_], npt.NDArray[np.uint64]]:
     """Which starts have a proper address of ``length`` behind them, and the address as a number."""
-    proper = (length >= SHORTEST_ADDRESS) & (length <= LONGEST_ADDRESS)
+    proper: npt.NDArray[np.bool_] = (length >= SHORTEST_ADDRESS) & (length <= LONGEST_ADDRESS)
     address = np.zeros(len(start), dtype=np.uint64)
-    usual = bool((length == USUAL_ADDRESS).all())
-    for i in range(USUAL_ADDRESS if usual else LONGEST_ADDRESS):
-        if usual:
-            byte = buffer[start + i]
+    if (length == USUAL_ADDRESS).all():
+        for byte in records(buffer, start, USUAL_ADDRESS):
             proper &= _ADDRESS[byte]
             address = (address << np.uint64(8)) | byte
-        else:
-            inside = i < length
-            byte = buffer[np.where(inside, start + i, 0)] if len(buffer) else np.empty(0, dtype=np.uint8)
-            proper &= _ADDRESS[byte] | ~inside
-            address = np.where(inside, (address << np.uint64(8)) | byte, address)
+        return proper, address
+    for i in range(LONGEST_ADDRESS):
+        inside = i < length
+        byte = buffer[np.where(inside, start + i, 0)] if len(buffer) else np.empty(0, dtype=np.uint8)
+        proper &= _ADDRESS[byte] | ~inside
+        address = np.where(inside, (address << np.uint64(8)) | byte, address)
     return proper, address
 
 

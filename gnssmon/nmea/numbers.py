@@ -82,38 +82,36 @@ def digits(buffer: Bytes, start: Offsets, end: Offsets) -> Digits:
 def _aligned_digits(buffer: Bytes, start: Offsets, end: Offsets) -> Digits | None:
     """The same for a column whose numbers have all the same number of decimals, as a receiver's have; else None.
 
-    Right-aligned, their points stand in one column of the matrix and all digits have their weight by column.
+    Right-aligned, their points stand in one row of the matrix and all digits have their weight by row.
     """
     length = end - start
-    width = int(length.max())
-    signed = np.zeros(len(start), dtype=bool)
-    head = buffer[np.minimum(start, len(buffer) - 1)]
+    width, shortest = int(length.max()), int(length.min())
+    if int(end.min()) < width:
+        return None
+    text = records(buffer, end - width, width)
+    # Of a shorter number, what stands before it is not its own.
+    head = text[0] if shortest == width else buffer[np.minimum(start, len(buffer) - 1)]
     negative = (head == _MINUS) & (length > 0)
     signed = negative | ((head == _PLUS) & (length > 0))
-    first = start + signed
-    at = end[:, None] + np.arange(-width, 0)
-    text = buffer[np.maximum(at, 0)] - np.uint8(_ZERO)
-    if signed.any() or int(length.min()) < width:
-        text[at < first[:, None]] = 0
-    other = text > 9
-    count = other.sum(axis=0)
+    filled = length > signed
+    text -= np.uint8(_ZERO)
+    empty = width - length + signed
+    for place in range(int(empty.max())):
+        text[place] *= place >= empty
+    count = np.count_nonzero(text > 9, axis=1)
     places = np.flatnonzero(count)
-    decimals = 0
+    decimals = point = 0
+    weight = _TEN_FLOAT[np.arange(width - 1, -1, -1)]
     if len(places) > 1:
         return None
-    filled = end > first
     if len(places):
-        column = int(places[0])
-        if count[column] != filled.sum() or (text[other[:, column], column] != _POINT_DIGIT).any():
+        place = int(places[0])
+        point, decimals = 1, width - 1 - place
+        if np.count_nonzero(text[place] == _POINT_DIGIT) != np.count_nonzero(filled):
             return None
-        decimals = width - 1 - column
-        text[:, column] = 0
-        weight = _TEN_FLOAT[np.arange(width - 1, -1, -1)].copy()
-        weight[:column] /= 10.0
-    else:
-        weight = _TEN_FLOAT[np.arange(width - 1, -1, -1)]
-    mantissa = (text.astype(np.float64) @ weight).astype(np.int64)
-    point = 1 if len(places) else 0
+        weight[:place] /= 10.0
+        weight[place] = 0.0
+    mantissa = (weight @ text.astype(np.float64)).astype(np.int64)
     whole = length - signed - decimals - point
     valid = filled & (whole + decimals > 0)
     return Digits(mantissa, np.full(len(start), decimals), whole, negative, valid)
@@ -166,6 +164,8 @@ def small_numbers(buffer: Bytes, start: Offsets, end: Offsets) -> npt.NDArray[np
 
 def records(buffer: Bytes, start: Offsets, size: int) -> Bytes:
     """The ``size`` bytes from each start on, shape (size, n); all must lie inside."""
+    if not len(start):
+        return np.empty((size, 0), dtype=np.uint8)
     # A view of what begins at every byte: whole items of it are copied far quicker than byte by byte.
     items = np.ndarray((len(buffer) - size + 1,), dtype=f"V{size}", buffer=buffer.data, strides=(1,))
     return np.ascontiguousarray(items[start].view(np.uint8).reshape(-1, size).T)
