@@ -142,7 +142,7 @@ class Dashboard(App[None]):
     def action_view(self, name: str) -> None:
         """Show another view."""
         self._view = next(view for view in VIEWS if view.name == name)
-        self._row = 0
+        self._row, self._choice = 0, ""
         self._paint()
 
     def action_window(self) -> None:
@@ -222,9 +222,9 @@ class Dashboard(App[None]):
         self._paint()
 
     def action_choice(self) -> None:
-        """Look at the next kind of sentence, or at all."""
+        """Look at the next of what the view can show alone (a signal, a kind of sentence), or at all."""
         snapshot = self.snapshot()
-        kinds = ["", *sorted(snapshot.stream.by_type)] if snapshot is not None else [""]
+        kinds = ["", *self._view.choices(snapshot)] if snapshot is not None else [""]
         at = kinds.index(self._choice) if self._choice in kinds else 0
         self._choice, self._row = kinds[(at + 1) % len(kinds)], 0
         self._paint()

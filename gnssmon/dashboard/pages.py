@@ -16,7 +16,7 @@ from gnssmon.dashboard.views import View
 KEYS = """\
 1 to 8        views                       w   next window of time
 m             set the mark to now         f   freeze the picture
-a             mark open alarms as seen    t   next kind of sentence
+a             mark open alarms as seen    t   one signal, one kind of sentence
 up, down      older, newer row            n   next source
 ctrl+p        all commands                q   quit
 
@@ -37,8 +37,7 @@ class HelpPage(ModalScreen[None]):
         self._view = view
 
     def compose(self) -> ComposeResult:
-        keys = dict.fromkeys(key for _, _, columns in self._view.layouts for _, stack in columns for key, _ in stack)
-        texts = [f"{panel(key).title}\n\n{panel(key).help}" for key in keys]
+        texts = [f"{panel(key).title}\n\n{panel(key).help}" for key in self._view.panels()]
         with VerticalScroll():
             yield Static("\n\n".join([f"Keys\n\n{KEYS}", *texts]), markup=False)
 

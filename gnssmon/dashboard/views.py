@@ -36,6 +36,14 @@ class View:
                 return columns
         return self.layouts[-1][2]
 
+    def panels(self) -> list[str]:
+        """The keys of all its panels, at any size."""
+        return list(dict.fromkeys(key for _, _, columns in self.layouts for _, stack in columns for key, _ in stack))
+
+    def choices(self, snapshot: Snapshot) -> list[str]:
+        """What of it may be looked at alone."""
+        return [choice for key in self.panels() for choice in panel(key).choices(snapshot)]
+
 
 def _alone(key: str) -> tuple[tuple[int, int, tuple[Column, ...]], ...]:
     return ((0, 0, ((1, ((key, 1),)),)),)
@@ -70,7 +78,15 @@ VIEWS: tuple[View, ...] = (
         ),
     ),
     View("2", "sky", "Sky", _alone("sky")),
-    View("3", "signals", "Signals", _alone("signal_level")),
+    View(
+        "3",
+        "signals",
+        "Signals",
+        (
+            (118, 30, ((34, (("satellites", 1),)), (84, (("signal_level", 1),)))),
+            (0, 0, ((1, (("signal_level", 1),)),)),
+        ),
+    ),
     View("4", "position", "Position", _alone("scatter")),
     View(
         "5",

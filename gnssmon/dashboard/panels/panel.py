@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 from gnssmon.dashboard.drawing import Grid, Size
@@ -20,6 +20,8 @@ class Panel:
     help: str
     """What the figures mean, what is usual (with source), what to do if it is not; paragraphs by empty lines."""
     render: Callable[[Snapshot, Size], Grid]
+    choices: Callable[[Snapshot], Sequence[str]] = lambda _: ()
+    """What of it may be looked at alone (``Size.choice``)."""
 
 
 QUALITIES = (

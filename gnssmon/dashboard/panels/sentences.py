@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 from gnssmon.dashboard.drawing import Grid, Size
 from gnssmon.dashboard.panels.panel import Panel, nothing
 from gnssmon.nmea.inspection import Fields, inspect
@@ -30,6 +32,11 @@ def render(snapshot: Snapshot, size: Size) -> Grid:
     kind = printable(size.choice) if size.choice else "all kinds"
     grid.put(0, size.height - 1, f"{kind} (t), {len(lines)} kept; up, down: pick; f: freeze", "quiet", size.width)
     return grid
+
+
+def choices(snapshot: Snapshot) -> Sequence[str]:
+    """One kind of sentence."""
+    return sorted(snapshot.stream.by_type)
 
 
 def _formatter(line: LineNow) -> str:
@@ -71,6 +78,7 @@ def _fields(grid: Grid, fields: Fields, box: tuple[int, int, int, int]) -> None:
 PANEL = Panel(
     key="sentences",
     title="Sentences",
+    choices=choices,
     help="""\
 The latest sentences, oldest first, without start character and checksum; and one of them taken apart, each field with \
 its name and unit. A dash is an empty field: the receiver does not state it. Up and down pick an older or newer one, t \
