@@ -9,9 +9,15 @@ from operator import xor
 from hypothesis import strategies as st
 
 
+def checksum(text: bytes) -> bytes:
+    """Two hex digits."""
+    return b"%02X" % reduce(xor, text, 0)
+
+
 def line(body: str) -> bytes:
     """The body as a sentence with its checksum and CR LF."""
-    return f"${body}*{reduce(xor, body.encode('latin-1')):02X}\r\n".encode("latin-1")
+    text = body.encode("latin-1")
+    return b"$" + text + b"*" + checksum(text) + b"\r\n"
 
 
 def maybe(text: st.SearchStrategy[str]) -> st.SearchStrategy[str]:
@@ -48,6 +54,7 @@ LONGITUDES = st.builds(
     st.integers(0, 59),
     st.text("0123456789", min_size=2, max_size=9),
 )
+COMMON = ("GGA", "RMC", "GLL", "GSA", "GSV", "GST", "VTG", "ZDA", "GNS", "GBS", "GRS", "HDT", "THS", "DTM", "TXT")
 TALKERS = st.sampled_from(["GP", "GL", "GA", "GB", "GN", "GQ", "GI", "BD", "QZ", "PQ"])
 
 
@@ -63,7 +70,7 @@ def places(draw: st.DrawFn) -> str:
 @st.composite
 def bodies(draw: st.DrawFn, formatter: str | None = None) -> str:
     """A sentence's text between start character and ``*``: a random one of the common formatters, or the one named."""
-    kind = formatter or draw(st.sampled_from(["GGA", "RMC", "GLL", "GSA", "GSV", "GST", "VTG", "ZDA", "GNS"]))
+    kind = formatter or draw(st.sampled_from(COMMON))
     talker, time, place = draw(TALKERS), draw(maybe(TIMES)), draw(places())
     number = lambda low, high, most=4: draw(maybe(decimal(low, high, most)))  # noqa: E731 - a local shorthand
     if kind == "GGA":
@@ -73,19 +80,42 @@ def bodies(draw: st.DrawFn, formatter: str | None = None) -> str:
             f"{number(0, 60, 1)},{draw(maybe(st.just('0101')))}"
         )
     if kind == "RMC":
-        day = draw(maybe(st.builds("{:02d}{:02d}{:02d}".format, *map(st.integers, (1, 1, 0), (28, 12, 79)))))
+        day = draw(maybe(st.builds("{:02d}{:02d}{:02d}".format, *map(st.integers, (1, 1, 0), (28, 12, 99)))))
         tail = draw(st.sampled_from([",A", ",A,V", ""]))
+        variation = draw(st.sampled_from([",", "3.4,W", "0.1,E"]))
         return (
-            f"{talker}RMC,{time},{draw(st.sampled_from('AV'))},{place},{number(0, 99)},{number(0, 359)},{day},,{tail}"
+            f"{talker}RMC,{time},{draw(st.sampled_from('AV'))},{place},{number(0, 99)},{number(0, 359)},{day},"
+            f"{variation}{tail}"
         )
     if kind == "GLL":
-        return f"{talker}GLL,{place},{time},{draw(st.sampled_from('AV'))},{draw(st.sampled_from('ADN'))}"
+        return f"{talker}GLL,{place},{time},{draw(st.sampled_from('AV'))}{draw(st.sampled_from(['', ',A', ',N']))}"
     if kind == "GNS":
-        modes = draw(st.text("NADPRFEMS", min_size=1, max_size=6))
+        modes = draw(maybe(st.text("NADPRFEMS", min_size=1, max_size=6)))
         return (
             f"{talker}GNS,{time},{place},{modes},{number(0, 40, 0)},{number(0, 99)},{number(-100, 9000)},"
-            f"{number(-90, 90)},{number(0, 60, 1)},{draw(maybe(st.just('0101')))},V"
+            f"{number(-90, 90)},{number(0, 60, 1)},{draw(maybe(st.just('0101')))}{draw(st.sampled_from(['', ',V']))}"
         )
+    if kind == "GBS":
+        tail = draw(st.sampled_from(["", ",1,0", ",3,7", ",,"]))
+        return (
+            f"{talker}GBS,{time},{number(0, 99)},{number(0, 99)},{number(0, 99)},{number(0, 99, 0)},{number(0, 1)},"
+            f"{number(-99, 99)},{number(0, 9)}{tail}"
+        )
+    if kind == "GRS":
+        residuals = ",".join(number(-999, 999) for _ in range(12))
+        return (
+            f"{talker}GRS,{time},{draw(st.sampled_from('01'))},{residuals}{draw(st.sampled_from(['', ',1,1', ',4,B']))}"
+        )
+    if kind == "HDT":
+        return f"{talker}HDT,{number(0, 359)},T"
+    if kind == "THS":
+        return f"{talker}THS,{number(0, 359)},{draw(st.sampled_from('AEMSV'))}"
+    if kind == "DTM":
+        datum = draw(maybe(st.sampled_from(["W84", "P90", "999"])))
+        return f"{talker}DTM,{datum},,{number(0, 9)},N,{number(0, 9)},E,{number(-99, 99)},W84"
+    if kind == "TXT":
+        text = draw(st.text("ABCabc123 =:;.-_/^+()#%&'\"", max_size=61))
+        return f"{talker}TXT,01,01,{draw(st.sampled_from(['00', '02', '07']))},{text}"
     if kind == "GSA":
         used = [draw(maybe(st.integers(1, 336).map(lambda n: f"{n:02d}"))) for _ in range(12)]
         system = draw(st.sampled_from(["", ",1", ",4"]))
@@ -100,7 +130,8 @@ def bodies(draw: st.DrawFn, formatter: str | None = None) -> str:
     if kind == "GST":
         return f"{talker}GST,{time}," + ",".join(number(0, 99) for _ in range(7))
     if kind == "VTG":
-        return f"{talker}VTG,{number(0, 359)},T,{number(0, 359)},M,{number(0, 99)},N,{number(0, 99)},K,A"
+        mode = draw(st.sampled_from(["", ",A", ",N"]))
+        return f"{talker}VTG,{number(0, 359)},T,{number(0, 359)},M,{number(0, 99)},N,{number(0, 99)},K{mode}"
     return f"{talker}ZDA,{time},{draw(st.integers(1, 28)):02d},{draw(st.integers(1, 12)):02d},2026,00,00"
 
 
@@ -132,6 +163,22 @@ def streams(draw: st.DrawFn) -> bytes:
     """Sentences with anything between them: good ones, damaged ones, binary, text."""
     parts = draw(st.lists(st.one_of(bodies().map(line), RUBBISH), max_size=14))
     return b"".join(parts)
+
+
+@st.composite
+def long_lines(draw: st.DrawFn) -> bytes:
+    """Lines of thousands of bytes, with sentences, stamps and starts near where they have to be broken."""
+    near = st.integers(-90, 30).map(lambda n: b"x" * (4096 + n))
+    pieces = st.one_of(
+        near,
+        st.integers(0, 1100).map(lambda n: b"y" * n),
+        bodies().map(lambda body: line(body)[:-2]),
+        bodies().map(line),
+        st.sampled_from(
+            [b" 1699400577561 ", b"NMEA,", b"$", b"!", b"\\c:1241544035*5C\\", b"$GPGGA,0927", b"*5B", b"\r"]
+        ),
+    )
+    return b"".join(draw(st.lists(pieces, min_size=1, max_size=9)))
 
 
 @st.composite

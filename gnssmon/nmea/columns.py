@@ -28,9 +28,10 @@ class Tally:
     """Of the accepted ones, those without a checksum."""
     checksum_failures: int = 0
     malformed: int = 0
-    """Began like a sentence but cannot be one: cut short, over-long, unprintable byte inside, no proper address."""
+    """Began with an address like a sentence but cannot be one: cut short, over-long, unprintable byte inside."""
     non_nmea_bytes: int = 0
-    """Bytes outside sentences, their TAG blocks, host stamps and line ends: binary messages, noise, other text."""
+    """Bytes outside sentences, whole or not, their TAG blocks, host stamps and line ends: binary messages, noise, other
+    text."""
     by_type: Counter[str] = field(default_factory=Counter)
     """Accepted sentences per formatter (``GGA``) or, for a maker's own sentence, its whole address (``PTNL``)."""
     talkers: Counter[str] = field(default_factory=Counter)
@@ -43,7 +44,7 @@ class Sentences:
     """Accepted sentences of one block, in stream order. All arrays have shape (n,)."""
 
     buffer: npt.NDArray[np.uint8]
-    """The block's bytes and one line end more; offsets below point into it."""
+    """The block's bytes and line ends of our own; offsets below point into it."""
     start: npt.NDArray[np.int64]
     """Offset of the address's first byte (behind ``$`` or ``!``)."""
     end: npt.NDArray[np.int64]
@@ -52,11 +53,11 @@ class Sentences:
     size: npt.NDArray[np.int32]
     """Bytes on the line, from the start character to the end of the checksum, with two more for CR LF."""
     received_s: npt.NDArray[np.float64]
-    """Arrival of the chunk that completed the sentence, s since 1970 UTC; NaN unknown."""
+    """Arrival of the chunk that brought the sentence's last byte, s since 1970 UTC; NaN unknown."""
     stamped_s: npt.NDArray[np.float64]
     """The host's own stamp on the line (TAG ``c:``, a date before, UNIX time behind the checksum); NaN none."""
     address: npt.NDArray[np.uint64]
-    """The address's letters as a number, eight bits each, the last letter lowest."""
+    """The address as a number (see ``addresses``)."""
     marks: npt.NDArray[np.int64]
     """Offsets of every comma, ``*``, ``$``, ``!``, CR and LF in ``buffer``; shape (m,)."""
     first_mark: npt.NDArray[np.int64]

@@ -14,7 +14,7 @@ from dataclasses import field as with_default
 import numpy as np
 import numpy.typing as npt
 
-from gnssmon.nmea import numbers
+from gnssmon.nmea import addresses, numbers
 from gnssmon.nmea.columns import Chosen, Column, Columns, LazyFields, SatelliteRows, Sentences, Table
 from gnssmon.nmea.fields import Bounds, Field, Kind, read
 from gnssmon.nmea.sentences import SENTENCES
@@ -22,6 +22,8 @@ from gnssmon.nmea.sentences import SENTENCES
 Offsets = npt.NDArray[np.int64]
 
 DOP_PLACES = 3
+MOST_BEHIND_DOPS = 2
+"""System and, of some makers, signal."""
 USUAL_SLOTS = 12
 """Satellite numbers in a GSA sentence; some receivers send more or fewer places."""
 MOST_SLOTS = 64
@@ -30,11 +32,6 @@ USUAL_GROUP = ",nn,ee,aaa,cc"
 """Number, elevation, azimuth and level of a GSV sentence, as receivers print nearly all of them."""
 USUAL_FIELDS = ((1, 3), (4, 6), (7, 10), (11, 13))
 """Where its digits begin and end."""
-
-_FORMATTER = np.uint64(0xFFFFFF)
-"""The last three letters of an address as a number."""
-_MAKER, _TALKING_MAKER = ord("P"), int.from_bytes(b"PQ", "big")
-"""``$P…`` is a maker's own sentence, without a talker; PQ is a talker all the same (QZSS)."""
 
 _HEX_DIGIT = np.zeros(256, dtype=bool)
 _HEX_DIGIT[list(b"0123456789ABCDEFabcdef")] = True
@@ -120,18 +117,15 @@ def _from(lines: _Lines, place: int) -> Callable[[int], Bounds]:
 def decode(sentences: Sentences) -> Columns:
     """Decode the sentences whose formatter the table knows; hand on the others as they are."""
     count = sentences.last_mark - sentences.first_mark
-    formatter = (sentences.address & _FORMATTER).astype(np.int64)
-    talker = sentences.address >> np.uint64(24)
-    maker = (talker >> np.uint64(8) == _MAKER) & (talker != _TALKING_MAKER)
-    # Five letters, a field at least, and no maker's own sentence.
-    formatter[(talker >> np.uint64(16) > 0) | (talker < 256) | maker | (count == 0)] = -1
+    formatter = addresses.formatters(sentences.address)
+    formatter[count == 0] = -1
 
     tables: dict[str, Table] = {}
     satellites = _no_satellites()
     used = np.empty((0, USUAL_SLOTS), dtype=np.int16)
     known = np.zeros(len(sentences), dtype=bool)
     for name, places in PLACES.items():
-        chosen = np.flatnonzero(formatter == int.from_bytes(name.encode("ascii"), "big"))
+        chosen = np.flatnonzero(formatter == addresses.formatter_number(name))
         if not len(chosen):
             continue
         known[chosen] = True
@@ -144,7 +138,7 @@ def decode(sentences: Sentences) -> Columns:
         tables[name] = Table(
             name,
             sentences.sequence[chosen],
-            talker[chosen].astype(">u2").view("S2"),
+            addresses.talkers(sentences.address[chosen]),
             sentences.size[chosen],
             sentences.received_s[chosen],
             sentences.stamped_s[chosen],
@@ -166,9 +160,9 @@ def _gsa(lines: _Lines) -> tuple[dict[str, Column], npt.NDArray[np.int16]]:
     used = np.full((count, slots), -1, dtype=np.int16)
     columns: dict[str, Column] = {name: np.full(count, np.nan) for name in ("pdop", "hdop", "vdop")}
     columns["system_id"] = np.zeros(count, dtype=np.uint8)
-    make_up = lines.count * DOP_PLACES + behind
+    make_up = lines.count * (MOST_BEHIND_DOPS + 1) + behind
     for one in np.unique(make_up).tolist():
-        number, extra = divmod(one, DOP_PLACES)
+        number, extra = divmod(one, MOST_BEHIND_DOPS + 1)
         rows = np.flatnonzero(make_up == one)
         first = number - extra - DOP_PLACES
         if first < GSA_HEAD:
@@ -183,41 +177,44 @@ def _gsa(lines: _Lines) -> tuple[dict[str, Column], npt.NDArray[np.int16]]:
     return columns, used
 
 
-def _behind_dops(lines: _Lines) -> npt.NDArray[np.int64]:
+def _behind_dops(lines: _Lines) -> Offsets:
     """How many hex digits follow the DOPs: none, the system, or system and signal; shape (n,).
 
-    With the usual twelve places the number of fields tells; else the last fields themselves do: a digit without a point
-    behind a number with one.
+    With the usual twelve places for satellites the number of fields tells. Where the fields contradict it (a point in
+    what should be a hex digit or a satellite number), another number of places is assumed.
     """
-    count = lines.count
-    usual = GSA_HEAD + USUAL_SLOTS + DOP_PLACES
-    behind: Offsets = (count == usual + 1).astype(np.int64)
-    odd = np.flatnonzero(count != usual + 1)
-    if not len(odd):
-        return behind
-    part = lines.rows(odd)
-    last = _is_hex_digit(part, part.count - 1)
-    if not last.any():
-        return behind
-    first = _is_hex_digit(part, part.count - 2)
-    pointed = [_has_point(part, part.count - back) for back in (2, 3, 4)]
-    one = last & pointed[0]
-    one &= (part.count != usual) | (pointed[1] & pointed[2])
-    two = (part.count == usual + 2) & last & first & pointed[1]
-    behind[odd] = np.where(two, 2, one.astype(np.int64))
+    behind = np.clip(lines.count - (GSA_HEAD + USUAL_SLOTS + DOP_PLACES), 0, MOST_BEHIND_DOPS)
+    start, end = lines.bounds(np.maximum(lines.count - 1, 0))
+    length = end - start
+    extra = lines.count - (GSA_HEAD + USUAL_SLOTS + DOP_PLACES)
+    odd = np.flatnonzero(~(((extra == 0) & (length != 1)) | ((extra == 1) & (length <= 1))))
+    if len(odd):
+        behind[odd] = _behind_dops_by_content(lines.rows(odd), behind[odd])
     return behind
 
 
-def _is_hex_digit(lines: _Lines, place: Offsets) -> npt.NDArray[np.bool_]:
+def _behind_dops_by_content(lines: _Lines, usual: Offsets) -> Offsets:
+    """The number nearest to the usual one that the fields do not contradict."""
+    pointed = [_has_point(lines, lines.count - back) for back in range(1, DOP_PLACES + MOST_BEHIND_DOPS + 1)]
+    single = [_is_hex_digit_or_empty(lines, lines.count - back) for back in range(1, MOST_BEHIND_DOPS + 1)]
+    behind, off = usual.copy(), np.full(len(usual), MOST_BEHIND_DOPS + 1)
+    for number in range(MOST_BEHIND_DOPS + 1):
+        digits = np.logical_and.reduce(single[:number], initial=True) if number else True
+        satellites = ~np.logical_or.reduce(pointed[number + DOP_PLACES :]) if number < MOST_BEHIND_DOPS else True
+        better = digits & satellites & (abs(number - usual) < off)
+        behind[better], off[better] = number, abs(number - usual)[better]
+    return behind
+
+
+def _is_hex_digit_or_empty(lines: _Lines, place: Offsets) -> npt.NDArray[np.bool_]:
     start, end = lines.bounds(np.maximum(place, 0))
-    single: npt.NDArray[np.bool_] = _HEX_DIGIT[lines.buffer[np.minimum(start, len(lines.buffer) - 1)]]
-    alone: npt.NDArray[np.bool_] = single & (end - start == 1)
-    return alone
+    fits: npt.NDArray[np.bool_] = (end == start) | ((end - start == 1) & _HEX_DIGIT[lines.buffer[start]])
+    return fits
 
 
 def _has_point(lines: _Lines, place: Offsets) -> npt.NDArray[np.bool_]:
     text = numbers.characters(lines.buffer, *lines.bounds(np.maximum(place, 0)), numbers.LONGEST_NUMBER)
-    pointed: npt.NDArray[np.bool_] = (text == ord(".")).any(axis=1)
+    pointed: npt.NDArray[np.bool_] = (text == ord(".")).any(axis=1) & (place >= 0)
     return pointed
 
 
@@ -235,10 +232,9 @@ def _gsv(lines: _Lines) -> tuple[dict[str, Column], SatelliteRows]:
     number, elevation_deg, azimuth_deg, cn0_dbhz = _groups(lines, at)
     cn0_dbhz[~(cn0_dbhz > 0)] = np.nan
     given = _as_satellite(number)
-    present = given >= 0
+    present = (given > 0) | np.isfinite(cn0_dbhz)
     if not present.all():
-        # Nothing at all: padding to four groups.
-        present |= np.isfinite(cn0_dbhz) | np.isfinite(elevation_deg)
+        # Neither a number nor a level: padding to four groups, with nothing or with zeros.
         keep = np.flatnonzero(present)
         sentence, given = sentence[keep], given[keep]
         elevation_deg, azimuth_deg, cn0_dbhz = elevation_deg[keep], azimuth_deg[keep], cn0_dbhz[keep]

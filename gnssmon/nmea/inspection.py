@@ -6,13 +6,20 @@ without a name is numbered.
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 
+from gnssmon.nmea.addresses import makers_own
 from gnssmon.nmea.sentences import SENTENCES
 from gnssmon.printable import printable
 
 MOST_FIELDS = 100
 """Fields shown of one sentence."""
+
+LONGEST_FIELD = 100
+"""Characters shown of one field."""
+
+ESCAPE = re.compile(rb"\^([0-9A-Fa-f]{2})")
 
 MEANINGS = {
     "GGA": "fix: position, quality, satellites, height",
@@ -52,10 +59,13 @@ class Fields:
 
 
 def inspect(line: bytes) -> Fields:
-    """Take a sentence apart; ``line`` is everything between start character and ``*``. Never raises."""
-    parts = [printable(part, 100) for part in line.split(b",")[: MOST_FIELDS + 1]]
+    """Take a sentence apart: what stands between start character and ``*``, or the whole line. Never raises."""
+    body = line.strip(b"\r\n").removeprefix(b"$").removeprefix(b"!").partition(b"*")[0]
+    parts = [
+        printable(_unescaped(part), LONGEST_FIELD) for part in body.split(b",", MOST_FIELDS + 1)[: MOST_FIELDS + 1]
+    ]
     address, texts = parts[0], parts[1:]
-    formatter = address[2:] if len(address) == 5 else ""
+    formatter = address[2:] if len(address) == 5 and not makers_own(address) else ""
     if formatter == "GSV":
         named = _satellites(texts)
     elif formatter == "GSA":
@@ -63,11 +73,16 @@ def inspect(line: bytes) -> Fields:
     elif formatter in SENTENCES:
         named = _by_table(formatter, texts)
     else:
-        named = _by_pynmea2(address, formatter, texts)
-    return Fields(address, MEANINGS.get(formatter, ""), tuple(named))
+        return _by_pynmea2(address, texts)
+    return Fields(address, MEANINGS[formatter], named)
 
 
-def _by_table(formatter: str, texts: list[str]) -> list[NamedField]:
+def _unescaped(field: bytes) -> bytes:
+    """``^2C`` stands for a comma: two hex digits of a character that may not stand in a field as it is."""
+    return ESCAPE.sub(lambda match: bytes([int(match[1], 16)]), field)
+
+
+def _by_table(formatter: str, texts: list[str]) -> tuple[NamedField, ...]:
     names: list[tuple[str, str]] = []
     for field in SENTENCES[formatter]:
         label = _label(field.name) or "unit"
@@ -84,7 +99,7 @@ def _label(name: str) -> str:
     return name.replace("_", " ")
 
 
-def _satellites(texts: list[str]) -> list[NamedField]:
+def _satellites(texts: list[str]) -> tuple[NamedField, ...]:
     names = [("sentences", ""), ("sentence number", ""), ("satellites in view", "")]
     groups, left_over = divmod(max(0, len(texts) - 3), 4)
     for i in range(1, groups + 1):
@@ -99,22 +114,29 @@ def _satellites(texts: list[str]) -> list[NamedField]:
     return _zip(names, texts)
 
 
-def _used(texts: list[str]) -> list[NamedField]:
-    names = [("selection", ""), ("fix mode", ""), *((f"satellite {i}", "") for i in range(1, 13))]
-    names += [("PDOP", ""), ("HDOP", ""), ("VDOP", ""), ("system id", ""), ("signal id", "")]
-    return _zip(names, texts)
+def _used(texts: list[str]) -> tuple[NamedField, ...]:
+    # Twelve places unless there are more or fewer fields than twelve places, three DOPs and two identifiers explain.
+    pointed = [i for i, text in enumerate(texts) if "." in text]
+    behind = len(texts) - 17 if 17 <= len(texts) <= 18 or not pointed else len(texts) - 1 - pointed[-1]
+    places = len(texts) - 5 - min(max(behind, 0), 2)
+    names = [("selection", ""), ("fix mode", ""), *((f"satellite {i}", "") for i in range(1, places + 1))]
+    return _zip([*names, ("PDOP", ""), ("HDOP", ""), ("VDOP", ""), ("system id", ""), ("signal id", "")], texts)
 
 
-def _by_pynmea2(address: str, formatter: str, texts: list[str]) -> list[NamedField]:
+def _by_pynmea2(address: str, texts: list[str]) -> Fields:
     import pynmea2
 
-    names: list[tuple[str, str]] = []
-    known = pynmea2.TalkerSentence.sentence_types.get(formatter)
-    if known is not None:
-        names = [(str(field[0]), "") for field in known.fields]
-    return _zip(names, texts)
+    try:
+        known = type(pynmea2.parse(",".join([address, *texts])))
+    except Exception:  # whatever pynmea2 stumbles over in a hostile sentence, its fields are shown without names
+        return Fields(address, "", _zip([], texts))
+    names = [(str(field[0]), "") for field in known.fields]
+    # To pynmea2 the first field of a maker's own sentence is what follows the maker's three letters.
+    maker = issubclass(known, pynmea2.ProprietarySentence)
+    own_words = (known.__dict__.get("__doc__") or "").strip().partition("\n")[0]
+    return Fields(address, printable(own_words, LONGEST_FIELD), _zip(names[1:] if maker else names, texts))
 
 
-def _zip(names: list[tuple[str, str]], texts: list[str]) -> list[NamedField]:
+def _zip(names: list[tuple[str, str]], texts: list[str]) -> tuple[NamedField, ...]:
     padded = [*names, *((f"field {i}", "") for i in range(len(names) + 1, len(texts) + 1))]
-    return [NamedField(name, text, unit) for (name, unit), text in zip(padded, texts, strict=False)]
+    return tuple(NamedField(name, text, unit) for (name, unit), text in zip(padded, texts, strict=False))

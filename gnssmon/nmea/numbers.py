@@ -182,6 +182,8 @@ def times_of_day(buffer: Bytes, start: Offsets, end: Offsets) -> npt.NDArray[np.
     valid &= read.decimals <= 9
     milliseconds = (fraction * 1000 + scale // 2) // scale
     value = (hour * 3600 + minute * 60 + second) * 1000 + milliseconds
+    # Rounding must not make the day's last half millisecond a leap second.
+    value = np.where((second < 60) & (value == DAY_MS), DAY_MS - 1, value)
     return np.where(valid, value, -1)
 
 

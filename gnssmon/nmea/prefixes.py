@@ -1,92 +1,180 @@
-"""What may stand before and behind a sentence on its line: TAG blocks, host times, words.
+"""What may stand before and behind a sentence on its line: TAG blocks, host times, a word.
 
 Strategy. Between most sentences there is a line end and nothing else; those are passed over in one comparison. Only
-where more bytes stand, the text nearest to the sentence is read with patterns. What they recognise is kept as the
-host's stamp of the sentence and is not counted as foreign bytes; everything else between sentences is.
+where more bytes stand, the text nearest to the sentence is read: one by one, or, in the log of a program that stamps
+every line, all those that are made up like the first (``stamps``). What is recognised is kept as the host's stamp of
+the sentence and is not counted as foreign bytes; everything else between sentences is.
 """
 
 from __future__ import annotations
 
 import re
 from dataclasses import dataclass
-from datetime import UTC, datetime
 
 import numpy as np
 import numpy.typing as npt
 
+from gnssmon.nmea.stamps import Stamp, alike, stamp_before, stamp_behind, times_of, unix_s
+
+Bytes = npt.NDArray[np.uint8]
+Offsets = npt.NDArray[np.int64]
+Floats = npt.NDArray[np.float64]
+
 NEAR = 120
 """Bytes before and behind a sentence that are read: a TAG block holds 80 at most."""
 
-MILLISECONDS = 1e11
-"""Unix times above this are milliseconds: as seconds they would lie beyond the year 5000."""
+MANY = 8
+"""From so many on it pays to look for texts made up alike."""
+
+MOST_MAKE_UPS = 16
+"""Looked for in a block: a log has one or two; each look costs a pass over what is left."""
 
 TAG = re.compile(rb"\\([^\\\r\n$!]{0,100})\\\Z")
 TAG_TIME = re.compile(rb"(?:\A|,)c:(\d{1,17})(?=,|\*|\Z)")
-ISO = re.compile(rb"\[?(\d{4}-\d\d-\d\d[T ]\d\d:\d\d:\d\d(?:[.,]\d{1,9})?)(Z|[+-]\d\d:?\d\d)?\]?[\s,;:|>]*\Z")
-UNIX = re.compile(rb"(?<!\d)(\d{9,10}(?:\.\d{1,9})?|\d{13}(?:\.\d{1,6})?)[\s,;:|>]*\Z")
-WORD = re.compile(rb"[A-Za-z][A-Za-z0-9_-]{0,15}[\s,;:|>]+\Z")
-BEHIND = re.compile(rb"\A[\s,;|]*(\d{9,10}(?:\.\d{1,9})?|\d{13}(?:\.\d{1,6})?)[ \t]*(?=[\r\n]|\Z)")
+WORD = re.compile(rb"(?<![^\s,;:|>\]])[A-Za-z][A-Za-z0-9_-]{0,15}[\s,;:|>]+\Z")
+
+_LINE_END = np.zeros(256, dtype=bool)
+_LINE_END[[0x0A, 0x0D]] = True
 
 
 @dataclass(frozen=True, slots=True)
 class Surroundings:
-    """Where accepted sentences begin and end: offsets of start characters, and past the checksums; shape (n,)."""
+    """Where accepted sentences stand in a block; shape (n,)."""
 
-    begin: npt.NDArray[np.int64]
-    tail: npt.NDArray[np.int64]
+    begin: Offsets
+    """Of the start character."""
+    tail: Offsets
+    """Past the checksum, or the last field where there is none."""
+    before: Offsets
+    """Past whatever began like a sentence before this one; 0 where nothing did."""
 
 
-def read_surroundings(
-    data: bytes, sentences: Surroundings, buffer: npt.NDArray[np.uint8]
-) -> tuple[npt.NDArray[np.float64], int]:
-    """Stamps of the sentences (s since 1970 UTC, NaN none) and how many bytes around them were recognised."""
-    count = len(sentences.begin)
-    stamped_s = np.full(count, np.nan)
-    if not count:
+@dataclass(frozen=True, slots=True)
+class Prefix:
+    """What was recognised at the end of the text before a sentence."""
+
+    used: int
+    """Bytes."""
+    time_s: float | None
+    stamp: Stamp | None
+    """The host's time, where one stands there."""
+    tagged: bool
+    """A TAG block stands there: what it says depends on its checksum."""
+
+
+def read_surroundings(buffer: Bytes, sentences: Surroundings) -> tuple[Floats, int]:
+    """Stamps of the sentences (s since 1970 UTC, NaN none) and how many bytes around them were recognised.
+
+    ``buffer`` ends with a line end. A time behind a sentence goes before one in front of it: it was written last.
+    """
+    stamped_s = np.full(len(sentences.begin), np.nan)
+    if not len(stamped_s):
         return stamped_s, 0
-    before = np.append(0, sentences.tail[:-1])
-    first = buffer[np.maximum(sentences.begin - 1, 0)]
-    # Directly behind a line end, or at the block's start, there is no prefix.
-    prefixed = np.flatnonzero((sentences.begin > before) & (first != 0x0A) & (first != 0x0D))
-    after = buffer[np.minimum(sentences.tail, len(buffer) - 1)]
-    followed = np.flatnonzero((sentences.tail < len(buffer)) & (after != 0x0A) & (after != 0x0D))
-    recognised = 0
-    for i in prefixed.tolist():
-        begin = int(sentences.begin[i])
-        text = data[max(int(before[i]), begin - NEAR) : begin]
-        text = text[max(text.rfind(b"\n"), text.rfind(b"\r")) + 1 :]
-        if b"$" in text or b"!" in text:
-            continue  # a torn sentence, which is counted as one
-        stamp_s, used = _before(text)
+    # Directly behind a line end, or what came before, there is no prefix.
+    prefixed = (sentences.begin > sentences.before) & ~_LINE_END[buffer[np.maximum(sentences.begin - 1, 0)]]
+    recognised = _read_before(buffer, sentences, np.flatnonzero(prefixed), stamped_s)
+    followed = np.flatnonzero(~_LINE_END[buffer[sentences.tail]])
+    return stamped_s, recognised + _read_behind(buffer, sentences, followed, stamped_s)
+
+
+def _read_before(buffer: Bytes, sentences: Surroundings, rows: Offsets, stamped_s: Floats) -> int:
+    """Fill in the stamps of ``rows``; returns the bytes recognised."""
+    recognised, make_ups = 0, 0
+    while len(rows):
+        row, rows = int(rows[0]), rows[1:]
+        text = _text_before(buffer, int(sentences.before[row]), int(sentences.begin[row]))
+        prefix = read_prefix(text)
+        recognised += prefix.used
+        if prefix.time_s is not None:
+            stamped_s[row] = prefix.time_s
+        if not prefix.used or prefix.tagged or len(text) == NEAR or len(rows) < MANY or make_ups == MOST_MAKE_UPS:
+            continue
+        make_ups += 1
+        line = sentences.begin[rows] - len(text)
+        fits = (line >= sentences.before[rows]) & ((line <= 0) | _LINE_END[buffer[line - 1]])
+        done = _read_alike(buffer, line, fits, (text, prefix.stamp), rows, stamped_s)
+        recognised += prefix.used * int(np.count_nonzero(done))
+        rows = rows[~done]
+    return recognised
+
+
+def _read_behind(buffer: Bytes, sentences: Surroundings, rows: Offsets, stamped_s: Floats) -> int:
+    recognised, make_ups = 0, 0
+    while len(rows):
+        row, rows = int(rows[0]), rows[1:]
+        tail = int(sentences.tail[row])
+        text = buffer[tail : tail + NEAR].tobytes()
+        stamp = stamp_behind(text)
+        if stamp is None:
+            continue
+        stamped_s[row] = stamp.time_s
+        used = stamp.span[1]
         recognised += used
-        if stamp_s is not None:
-            stamped_s[i] = stamp_s
-    for i in followed.tolist():
-        tail = int(sentences.tail[i])
-        match = BEHIND.match(data[tail : tail + NEAR])
-        if match:
-            recognised += match.end()
-            stamped_s[i] = _unix(match[1])
-    return stamped_s, recognised
+        if len(rows) < MANY or make_ups == MOST_MAKE_UPS:
+            continue
+        make_ups += 1
+        begin = sentences.tail[rows]
+        fits = begin + used < len(buffer)
+        fits &= _LINE_END[buffer[np.where(fits, begin + used, 0)]]
+        done = _read_alike(buffer, begin, fits, (text[:used], stamp), rows, stamped_s)
+        recognised += used * int(np.count_nonzero(done))
+        rows = rows[~done]
+    return recognised
 
 
-def _before(text: bytes) -> tuple[float | None, int]:
-    """Stamp and number of bytes recognised at the end of ``text``."""
+def _read_alike(
+    buffer: Bytes,
+    begin: Offsets,
+    fits: npt.NDArray[np.bool_],
+    template: tuple[bytes, Stamp | None],
+    rows: Offsets,
+    stamped_s: Floats,
+) -> npt.NDArray[np.bool_]:
+    """Fill in the stamps of the ``rows`` whose texts, from ``begin`` on, are made up like the template; say which."""
+    text, stamp = template
+    done = np.zeros(len(rows), dtype=bool)
+    fitting = np.flatnonzero(fits)
+    texts = buffer[begin[fitting][:, None] + np.arange(len(text))]
+    same = np.flatnonzero(alike(texts, text))
+    if stamp is None:
+        done[fitting[same]] = True
+    elif len(same):
+        times_s = times_of(texts[same], stamp)
+        read = np.flatnonzero(np.isfinite(times_s))
+        done[fitting[same[read]]] = True
+        stamped_s[rows[done]] = times_s[read]
+    return done
+
+
+def _text_before(buffer: Bytes, before: int, begin: int) -> bytes:
+    """What stands on the line before ``begin``, NEAR bytes at most."""
+    text = buffer[max(before, begin - NEAR) : begin].tobytes()
+    return text[max(text.rfind(b"\n"), text.rfind(b"\r")) + 1 :]
+
+
+def read_prefix(text: bytes) -> Prefix:
+    """Read TAG blocks, then a host time and a word in either order, from the end of ``text`` backwards.
+
+    The time of the TAG block nearest to the sentence goes before those further away.
+    """
     whole = len(text)
-    stamp_s: float | None = None
-    if match := TAG.search(text):
+    time_s: float | None = None
+    while match := TAG.search(text):
+        time_s = time_s if time_s is not None else _tag_time(match[1])
         text = text[: match.start()]
-        stamp_s = _tag_time(match[1])
-        while match := TAG.search(text):
-            text = text[: match.start()]
+    tagged = len(text) < whole
+    found: Stamp | None = None
+    word_seen = False
     while True:
-        if match := ISO.search(text):
-            stamp_s = stamp_s if stamp_s is not None else _iso(match[1], match[2])
-        elif match := UNIX.search(text):
-            stamp_s = stamp_s if stamp_s is not None else _unix(match[1])
-        elif not (match := WORD.search(text)):
-            return stamp_s, whole - len(text)
-        text = text[: match.start()]
+        if found is None and (stamp := stamp_before(text)):
+            found = stamp
+            time_s = time_s if time_s is not None else stamp.time_s
+            text = text[: stamp.span[0]]
+        elif not word_seen and (match := WORD.search(text)):
+            word_seen = True
+            text = text[: match.start()]
+        else:
+            return Prefix(whole - len(text), time_s, found, tagged)
 
 
 def _tag_time(block: bytes) -> float | None:
@@ -99,19 +187,4 @@ def _tag_time(block: bytes) -> float | None:
         if digits.upper() != b"%02X" % total:
             return None
     match = TAG_TIME.search(body)
-    return _unix(match[1]) if match else None
-
-
-def _unix(digits: bytes) -> float:
-    value = float(digits)
-    return value / 1000.0 if value > MILLISECONDS else value
-
-
-def _iso(text: bytes, zone: bytes | None) -> float | None:
-    plain = text.decode("ascii").replace(",", ".")
-    moment, _, fraction = plain.partition(".")
-    try:
-        when = datetime.fromisoformat(moment + (zone or b"Z").decode("ascii").replace("Z", "+00:00"))
-    except ValueError:
-        return None
-    return when.astimezone(UTC).timestamp() + (float("0." + fraction) if fraction else 0.0)
+    return unix_s(match[1]) if match else None

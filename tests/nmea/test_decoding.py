@@ -6,16 +6,17 @@ import math
 from datetime import date
 
 import numpy as np
-import pynmea2
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from gnssmon.chunks import Chunk
 from gnssmon.nmea.decoding import decode
+from gnssmon.nmea.fields import Kind
 from gnssmon.nmea.framing import Framer
 from gnssmon.nmea.sentences import SENTENCES
 from tests.journeys.program import REAL_LOGS
+from tests.nmea.witness import NAMES, PLACES, reads_as, text_of, witness_of
 from tests.strategies import bodies, line
 
 
@@ -27,92 +28,50 @@ def columns(*bodies_: str):
     return decode(block)
 
 
-def witness_of(body: str):
-    """pynmea2's reading; it takes talker PQ (QZSS) for a maker's own sentence, so it is shown GQ in its place."""
-    return pynmea2.parse("$" + ("GQ" + body[2:] if body.startswith("PQ") else body))
-
-
-def milliseconds(text: str) -> int:
-    """Time of day by Python's own arithmetic; -1 empty."""
-    if not text:
-        return -1
-    whole = int(text[:2]) * 3600 + int(text[2:4]) * 60 + int(text[4:6])
-    fraction = float("0" + text[6:]) if len(text) > 6 else 0.0
-    return whole * 1000 + math.floor(fraction * 1000 + 0.5)
-
-
-def number(text) -> float:
-    return float(text) if text not in (None, "") else math.nan
-
-
-PLAIN = {
-    "GGA": {
-        "quality": "gps_qual",
-        "satellites_used": "num_sats",
-        "hdop": "horizontal_dil",
-        "altitude_m": "altitude",
-        "separation_m": "geo_sep",
-        "correction_age_s": "age_gps_data",
-        "station_id": "ref_station_id",
-    },
-    "RMC": {"speed_knots": "spd_over_grnd", "course_deg": "true_course"},
-    "GST": {
-        "range_rms": "rms",
-        "sigma_major_m": "std_dev_major",
-        "sigma_minor_m": "std_dev_minor",
-        "orientation_deg": "orientation",
-        "sigma_latitude_m": "std_dev_latitude",
-        "sigma_longitude_m": "std_dev_longitude",
-        "sigma_height_m": "std_dev_altitude",
-    },
-    "VTG": {
-        "course_deg": "true_track",
-        "course_magnetic_deg": "mag_track",
-        "speed_knots": "spd_over_grnd_kts",
-        "speed_kmh": "spd_over_grnd_kmph",
-    },
-    "ZDA": {"day": "day", "month": "month", "year": "year"},
-    "GNS": {
-        "satellites_used": "num_sats",
-        "hdop": "hdop",
-        "altitude_m": "altitude",
-        "separation_m": "geo_sep",
-    },
-    "GLL": {},
-}
-"""Our numbers and what pynmea2 calls them."""
-
-
-def compare(formatter: str, table, witnesses) -> None:
+def compare(table, witnesses) -> None:
     """Every column of a table against pynmea2's reading of the same lines."""
-    for ours, theirs in PLAIN[formatter].items():
-        expected = np.array([number(witness.data[_index(witness, theirs)]) for witness in witnesses])
-        assert np.array_equal(table.fields[ours], expected, equal_nan=True), (formatter, ours)
-    if "utc_ms" in table.fields:
-        index = 4 if formatter == "GLL" else 0
-        assert table.fields["utc_ms"].tolist() == [milliseconds(w.data[index]) for w in witnesses]
+    names = NAMES[table.formatter]
+    kinds = {field.name: field.kind for field in SENTENCES[table.formatter]}
+    for name in set(table.fields) - {*PLACES, "minute_decimals", *READ_ELSEWHERE.get(table.formatter, ())}:
+        expected = [reads_as(kinds[name], text_of(witness, names[name])) for witness in witnesses]
+        same(table.fields[name], expected, name)
     if "latitude_deg" in table.fields:
-        for ours, theirs, raw in (
-            ("latitude_deg", "latitude", "lat"),
-            ("longitude_deg", "longitude", "lon"),
-        ):
-            expected = np.array([getattr(w, theirs) if getattr(w, raw) else math.nan for w in witnesses])
-            assert np.array_equal(table.fields[ours], expected, equal_nan=True), (formatter, ours)
+        for ours, (theirs, raw) in PLACES.items():
+            same(table.fields[ours], [getattr(w, theirs) if getattr(w, raw) else math.nan for w in witnesses], ours)
+        decimals = [len(w.lat.partition(".")[2]) if w.lat else math.nan for w in witnesses]
+        same(table.fields["minute_decimals"], decimals, "minute_decimals")
 
 
-def _index(witness, name: str) -> int:
-    return [field[1] for field in witness.fields].index(name)
+def same(column, expected, name) -> None:
+    values = column.tolist()
+    assert len(values) == len(expected)
+    wrong = [(v, e) for v, e in zip(values, expected, strict=True) if v != e and not (v != v and e != e)]
+    assert wrong == [], name
 
 
-@pytest.mark.parametrize("formatter", PLAIN)
-@settings(max_examples=60, deadline=None)
+READ_ELSEWHERE = {"GSV": ("signal_id",), "GSA": ("system_id", "pdop", "hdop", "vdop")}
+"""Columns whose place depends on the number of fields; tests of their own below."""
+
+
+@pytest.mark.parametrize("formatter", SENTENCES)
+@settings(max_examples=40, deadline=None)
 @given(data=st.data())
-def test_numbers_times_and_places(formatter, data):
-    """Numbers to the last digit, times to the millisecond, degrees as degrees + minutes / 60, empty as unknown."""
+def test_every_column_is_what_pynmea2_reads(formatter, data):
+    """Numbers to the last digit, times to the millisecond, degrees as degrees + minutes / 60, letters, texts, dates;
+    empty, or missing in an older version's sentence, as unknown."""
     made = data.draw(st.lists(bodies(formatter), min_size=1, max_size=6))
-    witnesses = [witness_of(body) for body in made]
 
-    compare(formatter, columns(*made).tables[formatter], witnesses)
+    compare(columns(*made).tables[formatter], [witness_of(body) for body in made])
+
+
+def test_every_column_has_a_witness():
+    """A column that is added to the table must be named here."""
+    for formatter in SENTENCES:
+        table = columns(f"GP{formatter},").tables[formatter]
+        named = {*NAMES[formatter], *READ_ELSEWHERE.get(formatter, ())}
+        if "latitude_deg" in table.fields:
+            named |= {*PLACES, "minute_decimals"}
+        assert set(table.fields) == named
 
 
 @settings(max_examples=100, deadline=None)
@@ -126,10 +85,8 @@ def test_satellites_in_view(made):
         rest = body.split(",")[4:]
         signals.append(ord(rest[-1]) if len(rest) % 4 == 1 else 0)
         for i in range(0, len(rest) - 3, 4):
-            level = number(rest[i + 3])
-            expected.append(
-                (row, int(rest[i]), number(rest[i + 1]), number(rest[i + 2]), level if level > 0 else math.nan)
-            )
+            elevation, azimuth, level = (reads_as(Kind.NUMBER, text) for text in rest[i + 1 : i + 4])
+            expected.append((row, int(rest[i]), elevation, azimuth, level if level > 0 else math.nan))
     rows = decoded.satellites
     found = list(
         zip(
@@ -156,7 +113,7 @@ def test_satellites_used(made):
         fields = body.split(",")[1:]
         assert decoded.used[row, :12].tolist() == [int(f) if f else -1 for f in fields[2:14]]
         for name, text in zip(("pdop", "hdop", "vdop"), fields[14:17], strict=True):
-            assert np.array_equal(table.fields[name][row], number(text), equal_nan=True)
+            assert np.array_equal(table.fields[name][row], reads_as(Kind.NUMBER, text), equal_nan=True)
         assert table.fields["system_id"][row] == (ord(fields[17]) if len(fields) > 17 else 0)
 
 
@@ -176,18 +133,45 @@ def test_every_entry_of_the_table_is_read():
 
 @pytest.mark.parametrize("path", sorted(REAL_LOGS.glob("*.nmea")), ids=lambda path: path.name)
 def test_real_logs_against_pynmea2(path):
-    """Every number, time and place of the real logs is what pynmea2 reads."""
+    """Every column of the real logs is what pynmea2 reads; the satellites of GSV where it is not blind, in sentences
+    whose four groups are all there."""
     framer = Framer()
-    block = framer.feed(Chunk(path.read_bytes()[:600_000]))
-    tables = decode(block).tables
+    block = framer.feed(Chunk(path.read_bytes()))
+    decoded = decode(block)
     lines: dict[str, list[str]] = {}
     for start, end in zip(block.start.tolist(), block.end.tolist(), strict=True):
         text = block.buffer[start:end].tobytes().decode("ascii")
-        if text[2:5] in PLAIN and text[5:6] == "," and (text[0] != "P" or text[1] == "Q"):
+        if text[2:5] in SENTENCES and text[5:6] == "," and (text[0] != "P" or text[1] == "Q"):
             lines.setdefault(text[2:5], []).append(text)
-    assert lines or set(tables) <= {"GSA", "GSV"}
-    for formatter, texts in lines.items():
-        compare(formatter, tables[formatter], [witness_of(text) for text in texts])
+    assert set(lines) == set(decoded.tables) >= {"GGA", "RMC"}
+    witnesses = {formatter: [witness_of(text) for text in texts] for formatter, texts in lines.items()}
+    for formatter, theirs in witnesses.items():
+        compare(decoded.tables[formatter], theirs)
+    if "GSA" in witnesses:
+        table, theirs = decoded.tables["GSA"], witnesses["GSA"]
+        assert {len(w.data) for w in theirs} <= {17, 18}
+        for name in READ_ELSEWHERE["GSA"]:
+            kind = Kind.LETTER if name == "system_id" else Kind.NUMBER
+            same(table.fields[name], [reads_as(kind, text_of(w, NAMES["GSA"][name])) for w in theirs], name)
+        assert decoded.used.tolist() == [[int(n) if n else -1 for n in w.data[2:14]] for w in theirs]
+    if "GSV" in witnesses:
+        whole = [row for row, w in enumerate(witnesses["GSV"]) if len(w.data) in (19, 20) and all(w.data[3:19:4])]
+        rows = decoded.satellites
+        chosen = np.isin(rows.sentence, whole)
+        found = np.stack([rows.number, rows.elevation_deg, rows.azimuth_deg, rows.cn0_dbhz], axis=1)[chosen]
+        expected = np.array(
+            [
+                [reads_as(Kind.NUMBER, getattr(witnesses["GSV"][row], f"{name}_{i}")) for name in GSV_NAMES]
+                for row in whole
+                for i in range(1, 5)
+            ]
+        )
+        expected[~(expected[:, 3] > 0), 3] = math.nan
+        assert len(whole) > 50
+        assert np.array_equal(found, expected.astype(np.float32), equal_nan=True)
+
+
+GSV_NAMES = ("sv_prn_num", "elevation_deg", "azimuth", "snr")
 
 
 PUBLISHED = [
@@ -239,8 +223,12 @@ def test_published_satellite_sentences():
     assert unnumbered.satellites.number.tolist() == [-1]
     assert unnumbered.satellites.cn0_dbhz[0] == pytest.approx(26.9, abs=1e-6)
 
-    nothing = columns("GPGSV,1,1,00,1", "GPGSV,1,1,0,0", "GPGSV,1,1,00")
+    nothing = columns("GPGSV,1,1,00,1", "GPGSV,1,1,0,0", "GPGSV,1,1,00", "GPGSV,1,1,00,00,00,000,00,,,,")
     assert len(nothing.satellites.number) == 0
+
+    untracked = columns("GLGSV,1,1,04,73,12,066,,76,07,251,,82,07,354,,84,15,099,,0")
+    assert untracked.satellites.number.tolist() == [73, 76, 82, 84]
+    assert np.isnan(untracked.satellites.cn0_dbhz).all()
 
 
 def test_published_used_sentences():
@@ -251,18 +239,25 @@ def test_published_used_sentences():
         "GNGSA,A,3,01,02,03,04,,,,,,,1.5,0.9,1.2,4",
         "GNGSA,A,3,01,02,,,,,,,,,,,1.5,0.9,1.2,1,5",
         "GPGSA,A,1,,,,,,,,,,,,,,,",
+        "GPGSA,A,3,01,02,03,04,05,06,07,08,09,10,11,12,13,1.5,0.9,1.2",
+        "GPGSA,A,3,01,02,03,04,05,,,,,,,,1.5,0.9,1",
+        "GNGSA,A,3,01,02,03,04,05,,,,,,,1.5,0.9,1.2,2",
+        "GNGSA,A,3,01,02,00,00,00,00,00,00,00,00,00,00,2,1,1,2",
     )
     table = decoded.tables["GSA"]
 
     assert decoded.used[0, 8:10].tolist() == [195, 199]
     assert (decoded.used[1] > 0).sum() == 13
     assert (decoded.used[2] > 0).sum() == 4
-    assert [chr(c) if c else "" for c in table.fields["system_id"]] == ["1", "3", "4", "1", ""]
-    assert table.fields["vdop"].tolist()[:4] == [0.94, 1.2, 1.2, 1.2]
+    assert [chr(c) if c else "" for c in table.fields["system_id"]] == ["1", "3", "4", "1", "", "", "", "2", "2"]
+    assert table.fields["vdop"][[0, 1, 2, 3, 5, 6, 7, 8]].tolist() == [0.94, 1.2, 1.2, 1.2, 1.2, 1.0, 1.2, 1.0]
+    assert np.isnan(table.fields["vdop"][4])
+    assert (decoded.used > 0).sum(axis=1).tolist() == [10, 13, 4, 2, 0, 13, 5, 5, 2]
 
 
 def test_leap_second_and_dates():
-    """23:59:60 is a time; two-digit years are 1980 to 2079 (common practice); impossible ones are unknown."""
+    """23:59:60 is a time, and rounding makes none; two-digit years are 1980 to 2079 (common practice); impossible ones
+    are unknown."""
     made = [
         f"GNRMC,{time},A,4807.03810,N,01131.00000,E,0.02,,{day},,,A,V"
         for time, day in (
@@ -271,6 +266,7 @@ def test_leap_second_and_dates():
             ("240000.00", "010180"),
             ("120000.9996", "290224"),
             ("12:00:00", "320101"),
+            ("235959.9999", "010100"),
         )
     ]
     table = columns(*made).tables["RMC"]
@@ -281,9 +277,10 @@ def test_leap_second_and_dates():
         (date(1980, 1, 1) - epoch).days,
         (date(2024, 2, 29) - epoch).days,
         -1,
+        (date(2000, 1, 1) - epoch).days,
     ]
 
-    assert table.fields["utc_ms"].tolist() == [86_400_000, -1, -1, 43_201_000, -1]
+    assert table.fields["utc_ms"].tolist() == [86_400_000, -1, -1, 43_201_000, -1, 86_399_999]
     assert table.fields["date_days"].tolist() == days
 
 

@@ -2,16 +2,23 @@
 
 from __future__ import annotations
 
+import functools
+import json
+import math
+import operator
+import re
 from dataclasses import asdict
+from datetime import UTC, datetime
 
 import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from gnssmon.chunks import Chunk
+from gnssmon.chunks import Chunk, joined
 from gnssmon.nmea.framing import LONGEST_LINE, LONGEST_SENTENCE, Framer
-from tests.strategies import bodies, cut, line, streams
+from tests.journeys.program import REAL_LOGS
+from tests.strategies import RUBBISH, bodies, cut, line, long_lines, streams
 
 
 def frame(*pieces: bytes) -> tuple[Framer, list[bytes], list[float]]:
@@ -42,6 +49,33 @@ def test_any_cut_gives_the_same_sentences_and_tally(data):
         assert asdict(whole.tally) == asdict(other.tally)
 
 
+@settings(max_examples=60, deadline=None)
+@given(st.data())
+def test_any_cut_of_long_lines_gives_the_same(data):
+    """Lines too long to be held are broken where their own bytes say, in a block of any size."""
+    stream = data.draw(long_lines())
+    whole, texts, stamps = frame(stream)
+    for pieces in (data.draw(cut(stream)), [stream[i : i + 37] for i in range(0, len(stream), 37)]):
+        other, other_texts, other_stamps = frame(*pieces)
+
+        assert texts == other_texts
+        assert np.array_equal(stamps, other_stamps, equal_nan=True)
+        assert asdict(whole.tally) == asdict(other.tally)
+
+
+@settings(max_examples=60, deadline=None)
+@given(st.data())
+def test_any_cut_gives_the_same_arrivals(data):
+    """A sentence came with its last byte, whether its chunks are fed one by one or put together before."""
+    pieces = data.draw(cut(data.draw(st.one_of(streams(), long_lines()))))
+    chunks = [Chunk(piece, 100.0 + i) for i, piece in enumerate(pieces)]
+    one_by_one, together = Framer(), Framer()
+    came = [block.received_s for block in map(one_by_one.feed, chunks)] + [one_by_one.finish().received_s]
+    block = together.feed(joined(chunks))
+
+    assert np.concatenate(came).tolist() == [*block.received_s, *together.finish().received_s]
+
+
 @settings(max_examples=100, deadline=None)
 @given(stream=streams(), rubbish=st.binary(max_size=60))
 def test_rubbish_behind_takes_nothing_away(stream, rubbish):
@@ -70,6 +104,17 @@ def test_any_bytes_are_survived_and_bounded(noise):
 
     assert 0 <= framer.tally.non_nmea_bytes <= framer.tally.bytes == 2 * len(noise) + 10
 
+
+STAMPS = (
+    "{utc:%Y-%m-%dT%H:%M:%S}.{ms:03d}Z @",
+    "[{utc:%Y-%m-%d %H:%M:%S},{ms:03d}] @",
+    "{utc:%Y-%m-%dT%H:%M:%S}.{ms:03d}+00:00\t@",
+    "{time}.{ms:03d} @",
+    "{time}{ms:03d},@",
+    "NMEA,@,{time}{ms:03d}",
+    "{time}.{ms:03d} gps0: @",
+)
+"""How programs stamp the lines of a log; ``@`` is the sentence."""
 
 GGA = b"$GPGGA,092725.00,4717.11399,N,00833.91590,E,1,08,1.01,499.6,M,48.0,M,,*5B"
 """A published sample with a good checksum (receiver protocol description UBX-18010854, 4.2.4)."""
@@ -104,6 +149,44 @@ def test_stamps_before_and_behind(before, behind, stamp_s):
     assert stamps == [pytest.approx(stamp_s)] if stamp_s else np.isnan(stamps[0])
 
 
+@settings(max_examples=100)
+@given(st.lists(st.tuples(st.sampled_from(STAMPS), st.integers(0, 10**9), st.integers(0, 999)), min_size=1))
+def test_many_stamps_are_read_as_one_by_one(made):
+    """A log's stamps, read down its columns, are the very numbers that each line gives by itself."""
+    lines = [
+        form.format(time=1_000_000_000 + s, ms=ms, utc=datetime.fromtimestamp(1_000_000_000 + s, UTC)).encode()
+        for form, s, ms in made
+    ]
+    lines = [text.replace(b"@", GGA) + b"\r\n" for text in lines]
+    framer, texts, stamps = frame(b"".join(lines))
+    alone = [frame(text) for text in lines]
+
+    assert len(texts) == len(lines)
+    assert stamps == [one[2][0] for one in alone]
+    assert np.allclose(stamps, [1_000_000_000 + s + ms / 1000 for _, s, ms in made], rtol=0, atol=1e-6)
+    assert framer.tally.non_nmea_bytes == 0
+
+
+@pytest.mark.parametrize(
+    ("around", "foreign"),
+    [
+        (b"hello there world @", 12),  # one word is a logger's, more are text
+        (b"2026-13-01T00:00:01Z @", 21),  # no such month
+        (b"2026-03-01T00:00:61Z @", 21),  # no such second
+        (b"@ \r\n1699400577561\r\n", 14),  # a number on a line of its own stamps nothing
+        (b"$GPGGA,1699400577561 @", 0),  # part of a torn sentence, which counts as one
+        (b"@,169940057756", 13),  # no Unix time
+    ],
+)
+def test_what_is_no_stamp(around, foreign):
+    """Text that only resembles a stamp is not taken for one, and its bytes are foreign."""
+    framer, texts, stamps = frame(around.replace(b"@", GGA) + b"\r\n")
+
+    assert texts == [GGA[1:-3]]
+    assert math.isnan(stamps[0])
+    assert framer.tally.non_nmea_bytes == foreign
+
+
 def test_published_samples_with_wrong_sums_fail():
     """Samples published with wrong checksums: GBS 5B for 5A (UBX-18010854), DTM, HDT, GSA from public test data."""
     wrong = (
@@ -118,9 +201,11 @@ def test_published_samples_with_wrong_sums_fail():
 
 
 def test_lower_case_checksum_and_exclamation_mark():
-    """`*5b` counts like `*5B`; `!` opens a sentence too."""
+    """`*5b` counts like `*5B`; `!` opens a sentence too, but not every `!` in a text does."""
     assert len(frame(GGA[:-2] + b"5b\r\n")[1]) == 1
     assert frame(b"!AIVDM,1,1,,B,177KQJ5000G?tO`K>RA1wUbN0TKH,0*5C\r\n")[1] != []
+    assert frame(line("GPTXT,01,01,02,Hello! Bye!"))[1] == [b"GPTXT,01,01,02,Hello! Bye!"]
+    assert len(frame(b"$GPGGA,0927!AIVDM,1,1,,B,177KQJ5000G?tO`K>RA1wUbN0TKH,0*5C\r\n")[1]) == 1
 
 
 def test_long_sentences_of_real_receivers_pass():
@@ -139,6 +224,25 @@ def test_over_length_is_no_sentence():
 
     assert texts == []
     assert framer.tally.malformed == 1
+
+
+def test_over_length_counts_to_the_end_of_the_checksum():
+    """LONGEST_SENTENCE bytes from start character to checksum are the most."""
+    spare = LONGEST_SENTENCE - len("$PXYZ,*hh")
+    assert len(frame(line("PXYZ," + "0" * spare))[1]) == 1
+    assert len(frame(line("PXYZ," + "0" * (spare + 1)))[1]) == 0
+
+
+def test_long_addresses_of_makers():
+    """Makers' own addresses of more than eight letters are counted under all of their letters."""
+    framer, texts, _ = frame(
+        line("PQTMVERNO,1") + line("PQTMCFGMSGRATE,OK") + line("PSTMVERNO,1") + b"$PQTMVERNO,1*00\n"
+    )
+
+    assert len(texts) == 3
+    assert framer.tally.by_type == {"PQTMVERNO": 1, "PQTMCFGMSGRATE": 1, "PSTMVERNO": 1}
+    assert framer.tally.talkers == {"P": 3}
+    assert framer.tally.failures_by_type == {"PQTMVERNO": 1}
 
 
 def test_unprintable_bytes_make_a_sentence_malformed():
@@ -161,6 +265,14 @@ def test_without_checksums():
     assert (len(texts), framer.tally.malformed) == (1, 1)
 
 
+@pytest.mark.parametrize("torn", [b"$GPGGA,092725.00,4717.1", b"$GPGGA\r\n", b"$PGGGA,1\r\n", b"$GPXYZ,1\r\n"])
+def test_without_checksum_a_sentence_must_be_whole(torn):
+    """Torn at the stream's end, without a field, a maker's own, or of no known kind: not taken without a checksum."""
+    framer, texts, _ = frame(GGA[:-3] + b"\r\n" + torn)
+
+    assert (len(texts), framer.tally.malformed) == (1, 1)
+
+
 def test_a_line_without_end_is_bounded():
     """Megabytes without a line end are not kept; a sentence behind them is found."""
     framer = Framer()
@@ -174,9 +286,25 @@ def test_a_line_without_end_is_bounded():
     assert len(framer._held.data) <= LONGEST_LINE
 
 
+def test_silence_is_not_kept():
+    """Empty chunks, one a second, while half a sentence waits for days: nothing grows, and its arrival is its own."""
+    framer = Framer()
+    framer.feed(Chunk(GGA[:30], 100.0))
+    for second in range(1000):
+        framer.feed(Chunk(b"", 101.0 + second))
+    framer.check()
+    assert framer._held == Chunk(GGA[:30], 100.0)
+
+    assert framer.feed(Chunk(GGA[30:] + b"\r\n", 2000.0)).received_s.tolist() == [2000.0]
+
+
 def test_sentences_run_together_on_one_line():
-    """Two sentences without a line end between them are two."""
+    """Two sentences without a line end between them are two, and the first does not wait for one."""
     assert len(frame(GGA + GGA + b"\r\n")[1]) == 2
+
+    framer = Framer()
+    assert [len(framer.feed(Chunk(GGA))) for _ in range(3)] == [0, 1, 1]
+    assert len(framer.finish()) == 1
 
 
 def test_a_start_in_mid_sentence_begins_anew():
@@ -216,3 +344,44 @@ def test_many_different_addresses_are_bounded():
 
     assert framer.tally.sentences == 3000
     assert len(framer.tally.by_type) <= 513
+
+
+@pytest.mark.parametrize(
+    "flood", [b"$", b"$$GPGGA,", b"!AIVDM,", b"\\", b"*00", b"$GPGGA,1*", b"\r", b"1699400577561 "]
+)
+def test_floods_are_survived(flood):
+    """One thing over and over, without and with an end: bounded, nothing found, and the next sentence is."""
+    _, texts, _ = frame(*[flood * 3000] * 5, b"\r\n", GGA)
+
+    assert texts[-1:] == [GGA[1:-3]]
+    assert len(texts) <= 1 + 5 * 3000
+
+
+def reference_sentences(stream: bytes) -> list[bytes]:
+    """Sentences with a good checksum as the independent script beside the real logs finds them (``reference.py``)."""
+    found = re.finditer(rb"[$!]([^$*\r\n]*)\*([0-9A-Fa-f]{2})", stream)
+    return [m[1] for m in found if functools.reduce(operator.xor, m[1], 0) == int(m[2], 16)]
+
+
+@settings(max_examples=150, deadline=None)
+@given(st.lists(st.one_of(bodies().map(line), RUBBISH.filter(lambda r: b"!" not in r and len(r) < 4000)), max_size=14))
+def test_as_the_independent_reference_finds_them(parts):
+    """The same sentences as a plain pattern over the whole text finds, of those that have an address and are printable.
+    A good sentence comes first, so that none is taken without a checksum."""
+    stream = GGA + b"\r\n" + b"".join(parts)
+    proper = re.compile(rb"[0-9A-Z]{3,16}(,[ -~]*)?\Z")
+
+    assert frame(stream)[1] == [text for text in reference_sentences(stream) if proper.match(text)]
+
+
+LOGS = sorted(REAL_LOGS.glob("*.nmea"))
+
+
+@pytest.mark.parametrize("path", LOGS, ids=lambda path: path.name)
+def test_counts_of_the_real_logs(path):
+    """Sentences by type and checksum failures of real logs are those of the independent reference, exactly."""
+    expected = json.loads((REAL_LOGS / "REFERENCE.json").read_text())[path.name]
+    framer, _, _ = frame(path.read_bytes())
+
+    assert framer.tally.by_type == expected["sentences"]
+    assert framer.tally.checksum_failures == expected["checksum_failures"]
