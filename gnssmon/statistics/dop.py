@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import ClassVar, Self
 
 import numpy as np
@@ -9,6 +10,7 @@ import numpy.typing as npt
 
 from gnssmon.constellations.identity import SYSTEM_STEP
 from gnssmon.epochs.batch import EpochBatch
+from gnssmon.estimators import long_run
 from gnssmon.estimators.histogram import quantile
 from gnssmon.estimators.series import Series
 from gnssmon.estimators.tiles import Tiles
@@ -119,9 +121,8 @@ class Dop:
             value, count = column[own] % NAME_STEP / PER_UNIT, counts[own, 0]
             samples = self._reported[name].view(np.float32)[chosen].astype(np.float64)
             samples = np.round(samples[samples > 0.0], 3)
-            answers[f"dop.{name}_median"] = quantile_estimate(
-                samples, 0.5, confidence, value=quantile(value, count, 0.5)
-            )
+            median = quantile_estimate(samples, 0.5, confidence, value=quantile(value, count, 0.5))
+            answers[f"dop.{name}_median"] = _at_least_in_range(median, samples)
             if name == "pdop":
                 answers["dop.pdop_max"] = exact(float(value[-1]), int(count.sum()))
         chosen = self._recomputed.within(span.from_ms, span.to_ms)
@@ -136,7 +137,8 @@ class Dop:
             values = columns[f"{name}_{clocks}"]
             values = values[np.isfinite(values)]
             if len(values):
-                answers[f"dop.{name}_recomputed_median"] = quantile_estimate(values, 0.5, confidence)
+                median = quantile_estimate(values, 0.5, confidence)
+                answers[f"dop.{name}_recomputed_median"] = _at_least_in_range(median, values)
         return answers
 
     def picture(self, span: Span = EVERYTHING) -> None:
@@ -183,6 +185,17 @@ class Dop:
             hdop_systems=systems.hdop * blank,
             pdop_systems=systems.pdop * blank,
         )
+
+
+def _at_least_in_range(median: Estimate, samples: Floats) -> Estimate:
+    """The estimate, with the range seen and as much again on either side where samples move too slowly to say more.
+
+    Common practice, no source: a geometry follows the satellites' paths, and does not leave its range by chance.
+    """
+    if median.interval is not None or len(samples) < long_run.FEWEST_SAMPLES:
+        return median
+    low, high = float(samples.min()), float(samples.max())
+    return replace(median, interval=(max(2.0 * low - high, 0.0), 2.0 * high - low))
 
 
 def _distance(columns: dict[str, Floats], clocks: str) -> float:

@@ -140,3 +140,15 @@ def test_a_window():
 
     assert subject.summary(Span(0, 60_000))["dop.hdop_median"].value == 1.5
     assert subject.summary(Span(60_000, 120_000))["dop.hdop_median"].value == 0.9
+
+
+def test_an_interval_from_a_short_record():
+    """A geometry that moved from 0.6 to 0.8 once in half an hour: too slow for order statistics, but the range seen and
+    as much again on either side is told; a handful of epochs tells nothing."""
+    subject = Dop(Site())
+    subject.update(make_batch(np.arange(1800) * 1000, hdop=np.where(np.arange(1800) < 1000, 0.6, 0.8)))
+    assert subject.summary()["dop.hdop_median"].interval == pytest.approx((0.4, 1.0), abs=1e-6)
+
+    few = Dop(Site())
+    few.update(make_batch(np.arange(10) * 1000, hdop=np.where(np.arange(10) < 7, 0.6, 0.8)))
+    assert few.summary()["dop.hdop_median"].interval is None
